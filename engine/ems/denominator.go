@@ -1,0 +1,124 @@
+package ems
+
+import (
+	"guardrow/engine"
+)
+
+// Weight is a line's weight in a combination of mean squares.
+type Weight struct {
+	Set    engine.Set
+	Weight engine.Rational
+}
+
+// Test says what tests a term.
+//
+// Solution is the unique combination of other lines whose expectation equals E[MS_S] less S's own component; its weights
+// sum to 1. One line gives an exact test, several an approximate one. Without a solution, Unmatched names the components
+// that no line can match; NoDF says that the term itself has no degrees of freedom.
+type Test struct {
+	Set       engine.Set
+	NoDF      bool
+	Solution  []Weight // in the contract's order; nil where there is none
+	Unmatched []engine.Set
+}
+
+// Exact reports whether one line alone tests the term.
+func (t Test) Exact() bool { return len(t.Solution) == 1 }
+
+// Testable reports whether the term has a test.
+func (t Test) Testable() bool { return len(t.Solution) > 0 }
+
+// HasNegative reports whether a line's weight is negative.
+func (t Test) HasNegative() bool {
+	for _, w := range t.Solution {
+		if w.Weight.Sign() < 0 {
+			return true
+		}
+	}
+	return false
+}
+
+// Solver finds the tests of one model; it keeps scratch space between calls and is not safe for concurrent use.
+type Solver struct {
+	model  *Model
+	weight []engine.Rational // by line
+}
+
+// NewSolver returns a solver for the model's tests.
+func (m *Model) NewSolver() *Solver {
+	return &Solver{model: m, weight: make([]engine.Rational, len(m.Lines))}
+}
+
+// Test finds what tests line s, which is not the residual.
+//
+// Every line used contains s: the smallest sets among the lines used have components of their own that nothing else
+// there holds, so these must occur in the target, which is made of supersets of s. Dividing each component by N(T), the
+// condition at each T ⊋ S, smaller sets first, is
+//
+//	w(T) = m(S,T) − Σ over lines U used, S ⊊ U ⊊ T, of w(U)·m(U,T)
+//
+// which is forward substitution: exact, and unique. Where the right-hand side is not 0 but line T has no degrees of
+// freedom, the component of T cannot be matched. Lines with a fixed component never have a weight: no target holds one.
+func (v *Solver) Test(s engine.Set) Test {
+	m := v.model
+	test := Test{Set: s}
+	if m.Lines[m.Line(s)].DF == 0 {
+		test.NoDF = true
+		return test
+	}
+	used := make([]engine.Set, 0, 8)
+	for t := range m.above(s) {
+		w := v.need(s, t, used)
+		l := m.Line(t)
+		v.weight[l] = engine.Rational{}
+		switch {
+		case w.Sign() == 0:
+		case m.Lines[l].DF == 0:
+			test.Unmatched = append(test.Unmatched, t)
+		default:
+			v.weight[l] = w
+			used = append(used, t)
+		}
+	}
+	if len(test.Unmatched) > 0 {
+		m.sort(test.Unmatched)
+		return test
+	}
+	m.sort(used)
+	test.Solution = make([]Weight, len(used))
+	for i, u := range used {
+		test.Solution[i] = Weight{u, v.weight[m.Line(u)]}
+	}
+	return test
+}
+
+// need returns what is still missing of the component of t, over N(t), after the lines used so far.
+func (v *Solver) need(s, t engine.Set, used []engine.Set) engine.Rational {
+	m := v.model
+	w := m.multiplier(s, t)
+	if inner := (t & m.Design.All() &^ s).Len(); inner < 31 && 1<<inner < len(used) {
+		v.needBySubsets(s, t, &w)
+		return w
+	}
+	for _, u := range used {
+		if t.Holds(u) {
+			w = w.Sub(v.weight[m.Line(u)].Mul(m.multiplier(u, t)))
+		}
+	}
+	return w
+}
+
+// needBySubsets does the same by walking the sets between s and t, which is shorter where most lines are used.
+func (v *Solver) needBySubsets(s, t engine.Set, w *engine.Rational) {
+	m := v.model
+	free := t & m.Design.All() &^ s
+	for sub := -free & free; sub != 0; sub = (sub - free) & free {
+		u := s | sub
+		if u == t {
+			continue
+		}
+		if l := m.Line(u); l >= 0 && v.weight[l].Sign() != 0 {
+			*w = w.Sub(v.weight[l].Mul(m.multiplier(u, t)))
+		}
+	}
+}
