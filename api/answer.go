@@ -91,7 +91,7 @@ type ExpectedMeanSquaresAnswer struct {
 	Constraint          string               `json:"constraint"`
 	Factors             []DeclaredFactor     `json:"factors"`
 	ExpectedMeanSquares []ExpectedMeanSquare `json:"expected_mean_squares"`
-	Inseparable         [][]Term             `json:"inseparable"`
+	Inseparable         [][]string           `json:"inseparable"`
 }
 
 // ExpectedMeanSquare is the expectation of one line's mean square.
@@ -137,7 +137,7 @@ type Test struct {
 	DFDenominator       Number    `json:"df_denominator,omitzero"`
 	DFNumeratorBounds   []float64 `json:"df_numerator_bounds,omitempty"`
 	DFDenominatorBounds []float64 `json:"df_denominator_bounds,omitempty"`
-	Unmatched           []Term    `json:"unmatched,omitempty"`
+	Unmatched           []string  `json:"unmatched,omitempty"`
 	Explanation         string    `json:"explanation"`
 	Remedies            []Remedy  `json:"remedies"`
 	RemediesComplete    *bool     `json:"remedies_complete,omitempty"`
@@ -174,7 +174,7 @@ const (
 type Remedy struct {
 	Action  string         `json:"action"`
 	Factors []string       `json:"factors"`
-	Terms   []Term         `json:"terms,omitempty"`
+	Terms   []string       `json:"terms,omitempty"`
 	Change  Change         `json:"change"`
 	Text    string         `json:"text"`
 	Effect  []RemedyEffect `json:"effect"`
@@ -270,7 +270,7 @@ type Finding struct {
 	Severity string   `json:"severity"` // stop, caution or note
 	Message  string   `json:"message"`
 	Where    []string `json:"where"`
-	Terms    []Term   `json:"terms"`
+	Terms    []string `json:"terms"`
 	Remedies []Remedy `json:"remedies"`
 }
 

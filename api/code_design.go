@@ -45,8 +45,8 @@ const (
 	UnknownTerm Code = "unknown_term"
 	// NegligibleResidual: the residual cannot be assumed null.
 	NegligibleResidual Code = "negligible_residual"
-	// NegligibleTerm: a request for a line or a component does not name a negligible term.
-	NegligibleTerm Code = "negligible_term"
+	// NoSuchLine: a line or a component that a request asks for exists once negligible terms are pooled.
+	NoSuchLine Code = "no_such_line"
 	// TooManyTerms: an answer lists at most 8,192 terms.
 	TooManyTerms Code = "too_many_terms"
 	// TooManyComponents: an answer holds at most 250,000 components or weights.
@@ -96,7 +96,7 @@ func designRules() []Entry {
 		{Code: DesignTooLarge, Rule: "All level counts and the replicates multiply to less than 2^53.", Example: terms(`{"factors": [{"name": "rack", "levels": 100000000, "effect": "random"}, {"name": "slot", "levels": 100000000, "effect": "random"}]}`)},
 		{Code: UnknownTerm, Rule: "A term that a request names exists in the design.", Example: terms(`{"factors": [{"name": "freezer", "levels": 2, "effect": "random"}, {"name": "box", "levels": 4, "effect": "random", "within": ["freezer"]}], "negligible": ["freezer × box"]}`)},
 		{Code: NegligibleResidual, Rule: "The residual cannot be assumed null.", Example: terms(`{"factors": [{"name": "rack", "levels": 2, "effect": "fixed"}], "negligible": ["residual"]}`)},
-		{Code: NegligibleTerm, Rule: "A line or a component that a request asks for is not of a term declared negligible.", Example: Example{Path: "/v1/tests", Body: `{"design": {"factors": [{"name": "batch", "levels": 4, "effect": "random"}, {"name": "dose", "levels": 3, "effect": "fixed"}], "negligible": [["batch", "dose"]]}, "only": ["batch × dose"]}`}},
+		{Code: NoSuchLine, Rule: "A line or a component that a request asks for exists once negligible terms are pooled; the residual has no test.", Example: Example{Path: "/v1/tests", Body: `{"design": {"factors": [{"name": "batch", "levels": 4, "effect": "random"}, {"name": "dose", "levels": 3, "effect": "fixed"}], "negligible": [["batch", "dose"]]}, "only": ["batch × dose"]}`}},
 		{Code: TooManyTerms, Rule: "An answer lists at most 8,192 terms; max_order or only make it shorter.", Example: terms(`{"factors": [` + random("ABCDEFGHIJKLMOPQ") + `]}`)},
 		{Code: TooManyComponents, Rule: "An answer holds at most 250,000 components or weights; max_order or only make it shorter.", Example: Example{Path: "/v1/expected-mean-squares", Body: `{"design": {"factors": [` + random("ABCDEFGHIJKLM") + `]}}`}},
 		{Code: InvalidVariance, Rule: "A variance is a finite number, at least 0, and above 0 for the residual.", Example: tests(`[{"term": "residual", "variance": 0}]`)},
