@@ -1,0 +1,95 @@
+package ems
+
+import "guardrow/engine"
+
+// Estimator is the combination of mean squares whose expectation is a component of variance, or the sum of the random
+// ones among several that occur only together:
+//
+//	E[Σ Weights·MS] = Σ Shares·component(Sets)
+//
+// Where there is none, Weights is nil and either Unmatched names the components that no line can take away, or With names
+// what the component occurs only together with.
+type Estimator struct {
+	Sets      []engine.Set
+	Shares    []engine.Rational
+	Weights   []Weight // in the contract's order
+	Unmatched []engine.Set
+	With      []engine.Set // fixed terms, or others that have no line of their own
+}
+
+// Estimators returns one estimator for each random component or group of inseparable ones, in the contract's order of
+// their first terms.
+//
+// With equal numbers the combination is unique: the component's own line, less what tests it, over the number of
+// observations behind each effect.
+func (m *Model) Estimators() []Estimator {
+	solver := m.NewSolver()
+	grouped := make(map[engine.Set]*Group)
+	groups := m.Inseparable()
+	for i := range groups {
+		for _, s := range groups[i].Sets {
+			grouped[s] = &groups[i]
+		}
+	}
+	var estimators []Estimator
+	done := make(map[*Group]bool)
+	for _, line := range m.Lines {
+		if !m.Design.IsRandom(line.Set) {
+			continue
+		}
+		g := grouped[line.Set]
+		if g == nil {
+			g = &Group{Sets: []engine.Set{line.Set}, Shares: []engine.Rational{engine.Whole(1)}}
+		}
+		if !done[g] {
+			done[g] = true
+			estimators = append(estimators, m.estimator(solver, g))
+		}
+	}
+	return estimators
+}
+
+func (m *Model) estimator(solver *Solver, g *Group) Estimator {
+	var e Estimator
+	first := engine.Rational{}
+	for i, s := range g.Sets {
+		if !m.Design.IsRandom(s) {
+			e.With = append(e.With, s)
+			continue
+		}
+		if len(e.Sets) == 0 {
+			first = g.Shares[i]
+		}
+		e.Sets = append(e.Sets, s)
+		e.Shares = append(e.Shares, g.Shares[i].Quo(first))
+	}
+	lead := e.Sets[0]
+	switch {
+	case len(e.With) > 0:
+		return e
+	case m.Lines[m.Line(lead)].DF == 0:
+		e.With = m.company(e.Sets)
+		return e
+	}
+	solution, unmatched := solver.solve(lead, e.Sets)
+	if len(unmatched) > 0 {
+		e.Unmatched = unmatched
+		return e
+	}
+	behind := engine.Whole(m.Design.Behind(lead))
+	e.Weights = append(e.Weights, Weight{lead, engine.Whole(1).Quo(behind)})
+	for _, w := range solution {
+		e.Weights = append(e.Weights, Weight{w.Set, w.Weight.Neg().Quo(behind)})
+	}
+	return e
+}
+
+// company returns the terms in whose lines components without a line of their own occur.
+func (m *Model) company(sets []engine.Set) []engine.Set {
+	_, seen := m.occurrences(sets[0])
+	company := make([]engine.Set, 0, len(seen))
+	for _, o := range seen {
+		company = append(company, m.Lines[o.line].Set)
+	}
+	return company
+}
