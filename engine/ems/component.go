@@ -2,26 +2,24 @@ package ems
 
 import "guardrow/engine"
 
-// Estimator is the combination of mean squares whose expectation is a component of variance, or the sum of the random
-// ones among several that occur only together:
+// Estimator is the combination of mean squares whose expectation is a component of variance, or a sum of several that the
+// study cannot take apart:
 //
 //	E[Σ Weights·MS] = Σ Shares·component(Sets)
 //
-// Where there is none, Weights is nil and either Unmatched names the components that no line can take away, or With names
-// what the component occurs only together with.
+// Where there is none, Weights is nil and With names the terms in whose lines alone the components occur.
 type Estimator struct {
-	Sets      []engine.Set
-	Shares    []engine.Rational
-	Weights   []Weight // in the contract's order
-	Unmatched []engine.Set
-	With      []engine.Set // fixed terms, or others that have no line of their own
+	Sets    []engine.Set      // the component's own term first
+	Shares  []engine.Rational // the first is 1
+	Weights []Weight          // in the contract's order
+	With    []engine.Set
 }
 
 // Estimators returns one estimator for each random component or group of inseparable ones, in the contract's order of
 // their first terms.
 //
 // With equal numbers the combination is unique: the component's own line, less what tests it, over the number of
-// observations behind each effect.
+// observations behind each effect. What no line can take away stays in the sum, named so.
 func (m *Model) Estimators() []Estimator {
 	solver := m.NewSolver()
 	grouped := make(map[engine.Set]*Group)
@@ -72,11 +70,11 @@ func (m *Model) estimator(solver *Solver, g *Group) Estimator {
 		return e
 	}
 	solution, unmatched := solver.solve(lead, e.Sets)
-	if len(unmatched) > 0 {
-		e.Unmatched = unmatched
-		return e
-	}
 	behind := engine.Whole(m.Design.Behind(lead))
+	for _, u := range unmatched {
+		e.Sets = append(e.Sets, u.Set)
+		e.Shares = append(e.Shares, u.Weight.Mul(engine.Whole(m.Design.Behind(u.Set))).Quo(behind))
+	}
 	e.Weights = append(e.Weights, Weight{lead, engine.Whole(1).Quo(behind)})
 	for _, w := range solution {
 		e.Weights = append(e.Weights, Weight{w.Set, w.Weight.Neg().Quo(behind)})

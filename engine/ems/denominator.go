@@ -1,6 +1,9 @@
 package ems
 
 import (
+	"cmp"
+	"slices"
+
 	"guardrow/engine"
 )
 
@@ -50,6 +53,23 @@ func (m *Model) NewSolver() *Solver {
 }
 
 // Test finds what tests line s, which is not the residual.
+func (v *Solver) Test(s engine.Set) Test {
+	if v.model.Lines[v.model.Line(s)].DF == 0 {
+		return Test{Set: s, NoDF: true}
+	}
+	test := Test{Set: s}
+	solution, unmatched := v.solve(s, nil)
+	for _, u := range unmatched {
+		test.Unmatched = append(test.Unmatched, u.Set)
+	}
+	if len(unmatched) == 0 {
+		test.Solution = solution
+	}
+	return test
+}
+
+// solve finds the combination of lines whose expectation equals E[MS_S] less the components of s and of the terms in
+// without; and, where no line can match a component, how much of it, over N(T), the combination lacks.
 //
 // Every line used contains s: the smallest sets among the lines used have components of their own that nothing else
 // there holds, so these must occur in the target, which is made of supersets of s. Dividing each component by N(T), the
@@ -59,37 +79,32 @@ func (m *Model) NewSolver() *Solver {
 //
 // which is forward substitution: exact, and unique. Where the right-hand side is not 0 but line T has no degrees of
 // freedom, the component of T cannot be matched. Lines with a fixed component never have a weight: no target holds one.
-func (v *Solver) Test(s engine.Set) Test {
+func (v *Solver) solve(s engine.Set, without []engine.Set) (solution, unmatched []Weight) {
 	m := v.model
-	test := Test{Set: s}
-	if m.Lines[m.Line(s)].DF == 0 {
-		test.NoDF = true
-		return test
-	}
 	used := make([]engine.Set, 0, 8)
 	for t := range m.above(s) {
-		w := v.need(s, t, used)
 		l := m.Line(t)
 		v.weight[l] = engine.Rational{}
+		if slices.Contains(without, t) {
+			continue
+		}
+		w := v.need(s, t, used)
 		switch {
 		case w.Sign() == 0:
 		case m.Lines[l].DF == 0:
-			test.Unmatched = append(test.Unmatched, t)
+			unmatched = append(unmatched, Weight{t, w})
 		default:
 			v.weight[l] = w
 			used = append(used, t)
 		}
 	}
-	if len(test.Unmatched) > 0 {
-		m.sort(test.Unmatched)
-		return test
-	}
 	m.sort(used)
-	test.Solution = make([]Weight, len(used))
+	solution = make([]Weight, len(used))
 	for i, u := range used {
-		test.Solution[i] = Weight{u, v.weight[m.Line(u)]}
+		solution[i] = Weight{u, v.weight[m.Line(u)]}
 	}
-	return test
+	slices.SortFunc(unmatched, func(a, b Weight) int { return cmp.Compare(m.Design.Index(a.Set), m.Design.Index(b.Set)) })
+	return solution, unmatched
 }
 
 // need returns what is still missing of the component of t, over N(t), after the lines used so far.
