@@ -1,0 +1,128 @@
+package fit
+
+// longest is the number of readings of a cell that are handled at once: few enough to stay in the nearest cache for a
+// second look, so few that plain sums of them lose nothing.
+const longest = 1024
+
+// orderedMeans is cellMeans for rows that stand in cell order.
+func (k *Kernel) orderedMeans(y []float64, origin float64) float64 {
+	x := k.means
+	switch r := k.replicates; {
+	case r == 1:
+		for c := range x {
+			x[c] = y[c] - origin
+		}
+		return 0
+	case r == 2:
+		return pairsInOrder(x, y, origin)
+	case r <= longest:
+		return cellsInOrder(x, y, r, origin)
+	}
+	var within pair
+	r := k.replicates
+	for c := range x {
+		mean, ss := k.longCell(y[c*r : (c+1)*r])
+		x[c] = (y[c*r] - origin) + mean
+		within = within.add(ss)
+	}
+	return within.value()
+}
+
+// pairsInOrder is for two readings per cell.
+func pairsInOrder(x, y []float64, origin float64) float64 {
+	const stretch = 64
+	var within pair
+	for len(x) > 0 {
+		n := min(stretch, len(x))
+		cells, readings := x[:n], y[:2*n]
+		var part float64
+		for c := range cells {
+			first := readings[2*c]
+			d := readings[2*c+1] - first
+			cells[c] = (first - origin) + d/2
+			part += d * d
+		}
+		within = within.add(part / 2)
+		x, y = x[n:], y[2*n:]
+	}
+	return within.value()
+}
+
+// cellsInOrder is for cells of r readings, at most longest.
+func cellsInOrder(x, y []float64, r int, origin float64) float64 {
+	const stretch = 32
+	var within pair
+	for len(x) > 0 {
+		n := min(stretch, len(x))
+		var part float64
+		for c := range x[:n] {
+			cell := y[c*r : (c+1)*r]
+			mean, ss := meanAndSS(cell, cell[0])
+			x[c] = (cell[0] - origin) + mean
+			part += ss
+		}
+		within = within.add(part)
+		x, y = x[n:], y[n*r:]
+	}
+	return within.value()
+}
+
+// longCell returns the mean of a long cell, as its distance from the first reading, and the sum of squares about it: that
+// within blocks plus that between their means.
+func (k *Kernel) longCell(y []float64) (mean, ss float64) {
+	k.block = k.block[:0]
+	var total, within pair
+	for i := 0; i < len(y); i += longest {
+		part := y[i:min(i+longest, len(y))]
+		m, w := meanAndSS(part, y[0])
+		k.block = append(k.block, m)
+		total = total.add(m * float64(len(part)))
+		within = within.add(w)
+	}
+	mean = total.value() / float64(len(y))
+	for b, m := range k.block {
+		n := min(longest, len(y)-b*longest)
+		within = within.add((m - mean) * (m - mean) * float64(n))
+	}
+	return mean, within.value()
+}
+
+// meanAndSS returns the mean of y as its distance from the origin, and the sum of squares about it:
+//
+//	Σ (y − o)² − (Σ (y − o))² / n
+//
+// with o the origin or, where the difference would be less than an eighth of the first sum, the mean found with it. If all
+// of y is equal to the origin both are 0 exactly.
+func meanAndSS(y []float64, origin float64) (mean, ss float64) {
+	n := float64(len(y))
+	s, q := moments(y, origin)
+	if s*s > 0.875*n*q {
+		mean = s / n
+		better := origin + mean
+		s, q = moments(y, better)
+		return (better - origin) + s/n, max(q-s*s/n, 0)
+	}
+	return s / n, max(q-s*s/n, 0)
+}
+
+// moments returns Σ (y − origin) and Σ (y − origin)².
+func moments(y []float64, origin float64) (s, q float64) {
+	var s0, s1, s2, s3, q0, q1, q2, q3 float64
+	for ; len(y) >= 4; y = y[4:] {
+		d0, d1, d2, d3 := y[0]-origin, y[1]-origin, y[2]-origin, y[3]-origin
+		s0 += d0
+		s1 += d1
+		s2 += d2
+		s3 += d3
+		q0 += d0 * d0
+		q1 += d1 * d1
+		q2 += d2 * d2
+		q3 += d3 * d3
+	}
+	for _, v := range y {
+		d := v - origin
+		s0 += d
+		q0 += d * d
+	}
+	return (s0 + s1) + (s2 + s3), (q0 + q1) + (q2 + q3)
+}
