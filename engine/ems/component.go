@@ -1,6 +1,10 @@
 package ems
 
-import "guardrow/engine"
+import (
+	"slices"
+
+	"guardrow/engine"
+)
 
 // Estimator is the combination of mean squares whose expectation is a component of variance, or a sum of several that the
 // study cannot take apart:
@@ -16,11 +20,11 @@ type Estimator struct {
 }
 
 // Estimators returns one estimator for each random component or group of inseparable ones, in the contract's order of
-// their first terms.
+// their first terms; where only is not nil, for the components of those terms alone.
 //
 // With equal numbers the combination is unique: the component's own line, less what tests it, over the number of
 // observations behind each effect. What no line can take away stays in the sum, named so.
-func (m *Model) Estimators() []Estimator {
+func (m *Model) Estimators(only []engine.Set) []Estimator {
 	solver := m.NewSolver()
 	grouped := make(map[engine.Set]*Group)
 	groups := m.Inseparable()
@@ -32,7 +36,7 @@ func (m *Model) Estimators() []Estimator {
 	var estimators []Estimator
 	done := make(map[*Group]bool)
 	for _, line := range m.Lines {
-		if !m.Design.IsRandom(line.Set) {
+		if !m.Design.IsRandom(line.Set) || only != nil && !slices.Contains(only, line.Set) {
 			continue
 		}
 		g := grouped[line.Set]

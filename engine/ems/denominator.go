@@ -137,3 +137,30 @@ func (v *Solver) needBySubsets(s, t engine.Set, w *engine.Rational) {
 		}
 	}
 }
+
+// Numerator returns the lines of F's numerator with their weights, in the contract's order: the term's own line and, in the
+// sum form, those with a negative weight in the solution (Cochran 1951).
+func (t Test) Numerator(difference bool) []Weight {
+	lines := []Weight{{t.Set, engine.Whole(1)}}
+	for _, w := range t.Solution {
+		if !difference && w.Weight.Sign() < 0 {
+			lines = append(lines, Weight{w.Set, w.Weight.Neg()})
+		}
+	}
+	return lines
+}
+
+// Denominator returns the lines of F's denominator: in the sum form those with a positive weight in the solution, in the
+// difference form all of them.
+func (t Test) Denominator(difference bool) []Weight {
+	if difference {
+		return t.Solution
+	}
+	lines := make([]Weight, 0, len(t.Solution))
+	for _, w := range t.Solution {
+		if w.Weight.Sign() > 0 {
+			lines = append(lines, w)
+		}
+	}
+	return lines
+}
