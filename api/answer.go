@@ -215,7 +215,7 @@ type AnovaAnswer struct {
 type Analysis struct {
 	Response     string              `json:"response"`
 	Observations int64               `json:"observations"`
-	Mean         float64             `json:"mean"`
+	Mean         Number              `json:"mean"`
 	Rows         []Row               `json:"rows"`
 	Total        Total               `json:"total"`
 	Components   []ComponentEstimate `json:"components"`
@@ -228,7 +228,8 @@ type Row struct {
 	Effect          string   `json:"effect"`
 	Negligible      bool     `json:"negligible,omitempty"`
 	DF              int64    `json:"df"`
-	SS              float64  `json:"ss"`
+	SS              Number   `json:"ss"`
+	SSReason        string   `json:"ss_reason,omitempty"`
 	MS              Number   `json:"ms,omitzero"`
 	EMS             string   `json:"ems"`
 	F               Number   `json:"f,omitzero"`
@@ -247,14 +248,16 @@ type Row struct {
 
 // Total is the whole table's df and sum of squares about the mean.
 type Total struct {
-	DF int64   `json:"df"`
-	SS float64 `json:"ss"`
+	DF       int64  `json:"df"`
+	SS       Number `json:"ss"`
+	SSReason string `json:"ss_reason,omitempty"`
 }
 
 // ComponentEstimate is an estimated component of variance, or the sum of several that occur only together.
 type ComponentEstimate struct {
 	Terms          []string `json:"terms"`
 	Text           string   `json:"text"`
+	Negative       bool     `json:"negative,omitempty"`
 	Estimate       Number   `json:"estimate"`
 	EstimateReason string   `json:"estimate_reason,omitempty"`
 	Lower          Number   `json:"lower,omitzero"`
@@ -264,10 +267,28 @@ type ComponentEstimate struct {
 	Method         string   `json:"method,omitempty"`
 }
 
+// Severities of a Finding.
+const (
+	Stop    = "stop"
+	Caution = "caution"
+	Note    = "note"
+)
+
+// Codes of findings in an analysis.
+const (
+	// NegativeComponent (note): an estimate of a component of variance is negative.
+	NegativeComponent = "negative_component"
+	// LargeSubtraction (caution): the error of an approximate test in the difference form is the difference of two
+	// quantities of similar size.
+	LargeSubtraction = "large_subtraction"
+	// NoErrorVariation (caution): the error line of a test shows no variation at all.
+	NoErrorVariation = "no_error_variation"
+)
+
 // Finding is something the caller should know about the study.
 type Finding struct {
 	Code     string   `json:"code"`
-	Severity string   `json:"severity"` // stop, caution or note
+	Severity string   `json:"severity"`
 	Message  string   `json:"message"`
 	Where    []string `json:"where"`
 	Terms    []string `json:"terms"`

@@ -59,6 +59,8 @@ const (
 	ComponentOfFixed Code = "component_of_fixed"
 	// MissingResidual: where components are given, the residual's variance is among them.
 	MissingResidual Code = "missing_residual"
+	// InvalidConfidence: a confidence level is above 0 and below 1.
+	InvalidConfidence Code = "invalid_confidence"
 )
 
 func designRules() []Entry {
@@ -103,6 +105,7 @@ func designRules() []Entry {
 		{Code: RepeatedComponent, Rule: "Each component is given once.", Example: tests(`[{"term": "residual", "variance": 1}, {"term": "batch", "variance": 1}, {"term": ["batch"], "variance": 2}]`)},
 		{Code: ComponentOfFixed, Rule: "Only random terms have a variance.", Example: tests(`[{"term": "residual", "variance": 1}, {"term": "dose", "variance": 1}]`)},
 		{Code: MissingResidual, Rule: "Where components are given, the residual's variance is among them.", Example: tests(`[{"term": "batch", "variance": 1}]`)},
+		{Code: InvalidConfidence, Rule: "A confidence level is above 0 and below 1.", Example: Example{Path: "/v1/anova", Body: `{"design": {"factors": [{"name": "rack", "levels": 2, "effect": "fixed"}], "replicates": 2}, "data": {"rack": [1, 1, 2, 2], "volume": [4.1, 4.3, 4.0, 4.4]}, "confidence": 95}`}},
 	}
 	for i := range rules {
 		rules[i].Status = 422

@@ -11,9 +11,10 @@ import (
 
 // Bounds of one answer. They are stated in the contract.
 const (
-	MaxTerms      = 8192   // terms listed
-	MaxComponents = 250000 // components in expectations, or weights in tests
-	MaxPooledList = 32     // terms above max_order named one by one in a pooled line
+	MaxTerms      = 8192    // terms listed
+	MaxComponents = 250000  // components in expectations, or weights in tests
+	MaxPooledList = 32      // terms above max_order named one by one in a pooled line
+	MaxAnalysed   = 1000000 // components in the lines of all analyses of one answer
 )
 
 // namer names the terms of one design, each once.

@@ -52,6 +52,9 @@ func (b *Budget) spend(n int) bool {
 // Every remedy was found by deriving the changed design; the search stops when the budget is spent, and says so.
 func (m *Model) Remedies(t Test, budget *Budget) Remedies {
 	r := Remedies{Complete: true, Larger: Absent}
+	if budget.Steps < 0 {
+		return Remedies{}
+	}
 	m.raise(t.Set, budget, &r)
 	if t.NoDF && !m.Design.IsRandom(t.Set) {
 		return r // nothing pools into the line of a fixed term
@@ -96,6 +99,10 @@ func (m *Model) raise(s engine.Set, budget *Budget, r *Remedies) {
 func (m *Model) assume(s engine.Set, budget *Budget, r *Remedies) {
 	z := newZeroSearch(m, s, budget)
 	candidates := z.candidates()
+	if budget.Steps < 0 {
+		r.Complete, r.Larger = false, Unknown
+		return
+	}
 	var singles, small [][]int
 	complete := minimalSets(len(candidates), maxChanges, func(chosen []int) verdict {
 		if len(r.List) >= maxRemedies || budget.Steps < 0 {

@@ -28,16 +28,58 @@ func newZeroSearch(m *Model, s engine.Set, budget *Budget) *zeroSearch {
 	}
 }
 
-// candidates returns the terms whose components may be assumed zero, those of highest order first.
+// candidates returns the terms that can matter when their components are assumed zero, those of highest order first: those
+// that contain the term; those that could then pool into a line without degrees of freedom that the term needs; and those
+// whose components keep such a term from pooling. No minimal set has any other member.
 func (z *zeroSearch) candidates() []engine.Set {
+	m := z.model
+	matters := make([]bool, len(m.Lines))
+	for _, t := range z.lines {
+		matters[m.Line(t)] = true
+	}
+	for _, t := range append([]engine.Set{z.term}, z.lines...) {
+		if m.Lines[m.Line(t)].DF == 0 {
+			z.feeders(t, matters)
+		}
+	}
 	var sets []engine.Set
-	for _, l := range z.model.Lines[:len(z.model.Lines)-1] {
-		if l.Set != z.term {
+	for i, l := range m.Lines[:len(m.Lines)-1] {
+		if matters[i] && l.Set != z.term {
 			sets = append(sets, l.Set)
 		}
 	}
 	slices.Reverse(sets)
 	return sets
+}
+
+// feeders marks the terms that could pool into line t, and what keeps them from it. The term under test is never assumed
+// zero, so what its component keeps from pooling stays so.
+func (z *zeroSearch) feeders(t engine.Set, matters []bool) {
+	m := z.model
+	feed := func(s engine.Set) {
+		if z.budget.Steps < 0 || s == t || !t.Holds(s) || m.Design.DF(s) == 0 {
+			return
+		}
+		blocks := func(u engine.Set) bool { return !u.Holds(t) && m.multiplier(s, u).Sign() != 0 }
+		if z.term.Holds(s) && s != z.term && blocks(z.term) || s == z.term {
+			return
+		}
+		if l := m.Line(s); l >= 0 {
+			matters[l] = true
+		}
+		for u := range m.above(s) {
+			z.budget.spend(1)
+			if blocks(u) {
+				matters[m.Line(u)] = true
+			}
+		}
+	}
+	for _, l := range m.inside(t) {
+		feed(m.Lines[l].Set)
+	}
+	for _, s := range m.Apart {
+		feed(s)
+	}
 }
 
 // serves reports whether the term is testable with the given components zero. It is Solver.Test on the changed design,

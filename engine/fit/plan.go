@@ -16,7 +16,7 @@ type Plan struct {
 	estimators []ems.Estimator
 }
 
-// NewPlan solves the tests of the given lines, all of them where only is nil, and the estimators of all components.
+// NewPlan solves the tests of the given terms and the estimators of their components; of all where only is nil.
 func NewPlan(m *ems.Model, only []engine.Set, difference bool, confidence float64) *Plan {
 	p := &Plan{Model: m, Difference: difference, Confidence: confidence, tests: make([]ems.Test, len(m.Lines))}
 	solver := m.NewSolver()
@@ -33,6 +33,6 @@ func NewPlan(m *ems.Model, only []engine.Set, difference bool, confidence float6
 	for _, s := range only {
 		test(s)
 	}
-	p.estimators = m.Estimators()
+	p.estimators = m.Estimators(only)
 	return p
 }
