@@ -11,11 +11,14 @@ type Codes struct {
 }
 
 // Response is one column of readings. The reading of row r is Shift + Offsets[r]: the shift is the decimal number as it
-// was written in some row, subtracted exactly before rounding, so that digits common to all readings cost no precision.
+// was written in the first row, subtracted exactly before rounding, so that digits common to all readings cost no
+// precision. The shift is 0 where subtracting it gains nothing (see the package's comment).
 type Response struct {
 	Name    string
 	Shift   float64
 	Offsets []float64
+
+	exact string // the shift as the decimal it is: digits, then a power of ten
 }
 
 // Grid is a complete, balanced set of readings laid onto its design: an array with one axis per factor in the order of
@@ -32,21 +35,26 @@ type Grid struct {
 // Cells fills dst with the cell index Σ code·stride of rows first, first+1, … .
 func (g *Grid) Cells(dst []uint32, first int) {
 	clear(dst)
-	for a, axis := range g.Axes {
-		stride := g.Strides[a]
-		switch {
-		case axis.U8 != nil:
-			for i, c := range axis.U8[first : first+len(dst)] {
-				dst[i] += uint32(c) * stride
-			}
-		case axis.U16 != nil:
-			for i, c := range axis.U16[first : first+len(dst)] {
-				dst[i] += uint32(c) * stride
-			}
-		default:
-			for i, c := range axis.U32[first : first+len(dst)] {
-				dst[i] += c * stride
-			}
-		}
+	for a := range g.Axes {
+		g.Axes[a].addTo(dst, first, g.Strides[a])
+	}
+}
+
+// addTo adds code·stride of rows first, first+1, … to dst.
+func (c *Codes) addTo(dst []uint32, first int, stride uint32) {
+	switch {
+	case c.U8 != nil:
+		addCodes(dst, c.U8[first:first+len(dst)], stride)
+	case c.U16 != nil:
+		addCodes(dst, c.U16[first:first+len(dst)], stride)
+	default:
+		addCodes(dst, c.U32[first:first+len(dst)], stride)
+	}
+}
+
+func addCodes[T width](dst []uint32, codes []T, stride uint32) {
+	codes = codes[:len(dst)]
+	for i := range dst {
+		dst[i] += uint32(codes[i]) * stride
 	}
 }

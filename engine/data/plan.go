@@ -1,7 +1,5 @@
 package data
 
-import "math"
-
 // Plan says what the columns of the data are.
 type Plan struct {
 	// Factors are the names of the declared factors, in the order of declaration.
@@ -10,7 +8,7 @@ type Plan struct {
 	Responses []string
 	// Missing are texts that stand for a lost reading. One that is a number stands for every reading of that value.
 	Missing []string
-	// MaxRows is the largest number of rows; 0 for no limit beyond 2^31 − 2.
+	// MaxRows is the largest number of rows; 0 for no limit beyond 2^30 − 2.
 	MaxRows int
 	// Place is where the data stand in the request; empty for "data" in ScanJSON and "csv" in ScanCSV.
 	Place string
@@ -36,7 +34,7 @@ type LabelColumn struct {
 }
 
 // maxRows is the largest number of rows that codes can address.
-const maxRows = math.MaxInt32 - 1
+const maxRows = 1<<30 - 2
 
 func (p *Plan) rowLimit() int {
 	if p.MaxRows > 0 && p.MaxRows < maxRows {

@@ -315,7 +315,7 @@ func (r *reader) hex(pos int) rune {
 		case isDigit(c):
 			c -= '0'
 		case c|0x20 >= 'a' && c|0x20 <= 'f':
-			c = c | 0x20 - 'a' + 10
+			c = (c | 0x20) - 'a' + 10
 		default:
 			return -1
 		}

@@ -1,0 +1,46 @@
+package data
+
+import (
+	"bytes"
+	"strings"
+
+	"guardrow/engine"
+)
+
+// hintLimit is how many known names are searched for one that is near, so that a hint costs little.
+const hintLimit = 2000
+
+// nearest returns a sentence with the known name that is nearest to name, or nothing where none is near.
+func nearest(name string, known []string) string {
+	for _, k := range known {
+		if k != name && sameButForm(k, name) {
+			return " Did you mean " + engine.Quote(k) + "? Case and blanks count."
+		}
+	}
+	if len(name) > engine.MaxName {
+		return ""
+	}
+	return engine.DidYouMean(name, known[:min(len(known), hintLimit)])
+}
+
+// sameButForm reports whether two labels differ in nothing but case and blanks.
+func sameButForm(a, b string) bool {
+	return strings.EqualFold(strings.Join(strings.Fields(a), " "), strings.Join(strings.Fields(b), " "))
+}
+
+// readable returns text as valid UTF-8, cut to more than a message shows.
+func readable(text []byte) string {
+	const enough = 512
+	return string(bytes.ToValidUTF8(text[:min(len(text), enough)], []byte("\uFFFD")))
+}
+
+// numberHint returns a sentence on how a text that is no number could be meant as one, or nothing.
+func numberHint(text []byte) string {
+	text = bytes.TrimSpace(text)
+	if x := bytes.Replace(text, []byte{','}, []byte{'.'}, 1); bytes.Count(text, []byte{','}) == 1 {
+		if _, ok := parseDecimal(x); ok {
+			return " Write decimals with a point, not a comma."
+		}
+	}
+	return ""
+}
