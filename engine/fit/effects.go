@@ -1,67 +1,130 @@
 package fit
 
-import "math/bits"
+const (
+	// strip is the number of neighbouring columns that are transformed or folded together: they stay in the nearest cache.
+	strip = 256
+	// cacheful is the number of elements that are taken through all their inner axes before the next are looked at.
+	cacheful = 1 << 13
+)
 
-// strip is the number of neighbouring columns that are transformed or folded together: they stay in the nearest cache.
-const strip = 256
+// axes describes the array of cell means: one axis per factor of at least two levels, the last fastest. (Along an axis of
+// one level there are no contrasts.)
+type axes struct {
+	levels  []int
+	weights [][]float64 // by axis: see inverseLengths; nil for two levels, where both are 1/2
+	scale   float64     // product of the halves left out of weights
+	subset  []uint32    // by element of the folded array: the set of factors it belongs to
+}
 
-// transform replaces x, an array with one axis per entry of levels (the last fastest), by its Helmert contrasts along
-// every axis. Along an axis of a levels, with x₀ … x₍a−1₎ the values there:
-//
-//	element 0: x₀ + x₁ + … + x₍a−1₎
-//	element j: x₀ + … + x₍j−1₎ − j·xⱼ      for j ≥ 1
-//
-// These are orthogonal; the squares of their lengths, a and j(j+1), are divided out by fold.
-func transform(x []float64, levels []int) {
-	stride := len(x)
-	for a := 0; a < len(levels); a++ {
-		n := levels[a]
+// newAxes describes the array of the cells of factors with the given levels.
+func newAxes(levels []int) *axes {
+	a := &axes{scale: 1, subset: []uint32{0}}
+	for i := len(levels) - 1; i >= 0; i-- {
+		if levels[i] == 1 {
+			continue
+		}
+		for _, s := range a.subset {
+			a.subset = append(a.subset, s|1<<i)
+		}
+	}
+	for _, n := range levels {
+		switch n {
+		case 1:
+			continue
+		case 2:
+			a.scale /= 2
+			a.weights = append(a.weights, nil)
+		default:
+			a.weights = append(a.weights, inverseLengths(n))
+		}
+		a.levels = append(a.levels, n)
+	}
+	return a
+}
+
+// sumsOfSquares returns the sum of squares, over the cells x, of every subset of k factors, indexed by the set (bit i for
+// factor i): the squares of orthonormal contrasts of x along every axis, added up over those that are not the mean along
+// exactly these axes. Subsets that hold a factor of one level are 0 exactly; that of the empty set is the mean's. It
+// overwrites x.
+func (a *axes) sumsOfSquares(x []float64, k int) []float64 {
+	subsets := make([]float64, 1<<k)
+	if len(a.levels) == 0 {
+		subsets[0] = x[0] * x[0]
+		return subsets
+	}
+	n := a.levels[0]
+	stride := len(x) / n
+	transform(x, stride, a.levels[1:])
+	if n == 2 {
+		squareTwos(x[:stride], x[stride:])
+	} else {
+		for low := 0; low < stride; low += strip {
+			squareStrip(x[low:], min(strip, stride-low), stride, a.weights[0])
+		}
+		x = x[:2*stride]
+	}
+	for i, n := range a.levels[1:] {
+		stride /= n
+		if n > 2 {
+			foldAxis(x, stride, a.weights[i+1])
+			x = x[:len(x)/n*2]
+		}
+	}
+	for i, v := range x {
+		subsets[a.subset[i]] = v * a.scale
+	}
+	return subsets
+}
+
+// transform replaces each block of the given size in x, an array with one axis per entry of levels, by its contrasts along
+// every axis (see merge).
+func transform(x []float64, size int, levels []int) {
+	if len(levels) == 0 {
+		return
+	}
+	// As many blocks at once as stay in the cache; a larger block first by its parts.
+	if size > cacheful {
+		n := levels[0]
+		for ; len(x) > 0; x = x[size:] {
+			transform(x[:size], size/n, levels[1:])
+			along(x[:size], size, levels[:1])
+		}
+		return
+	}
+	for together := cacheful / size * size; len(x) > 0; {
+		part := x[:min(together, len(x))]
+		along(part, size, levels)
+		x = x[len(part):]
+	}
+}
+
+// along transforms blocks of the given size along the axes of levels, the slowest first.
+func along(x []float64, size int, levels []int) {
+	stride := size
+	for len(levels) > 0 {
+		n := levels[0]
+		pairs := 0 // axes of two levels from here on
+		for pairs < len(levels) && levels[pairs] == 2 {
+			pairs++
+		}
+		levels = levels[1:]
 		stride /= n
 		switch {
-		case n == 1:
-		case n == 2 && a+1 < len(levels) && levels[a+1] == 2:
-			a++
+		case pairs > 0 && pairs%2 == 0:
+			levels = levels[1:]
 			stride /= 2
 			fours(x, stride)
-		case n == 2:
+		case pairs > 0:
 			twos(x, stride)
 		case stride == 1:
-			helmertRows(x, n)
+			for first := 0; first < len(x); first += n {
+				contrastRow(x[first : first+n])
+			}
 		default:
 			for first := 0; first < len(x); first += n * stride {
-				helmert(x[first:first+n*stride], n, stride)
+				contrast(x[first:first+n*stride], n, stride)
 			}
 		}
-	}
-}
-
-// helmert transforms one block of n·stride elements along its first axis.
-func helmert(x []float64, n, stride int) {
-	for low := 0; low < stride; low += strip {
-		width := min(strip, stride-low)
-		total := x[low : low+width]
-		for j := 1; j < n; j++ {
-			row := x[j*stride+low:][:len(total)]
-			weight := float64(j)
-			for i, v := range row {
-				s := total[i]
-				row[i] = s - weight*v
-				total[i] = s + v
-			}
-		}
-	}
-}
-
-// helmertRows transforms along the last axis, of n levels.
-func helmertRows(x []float64, n int) {
-	for ; len(x) >= n; x = x[n:] {
-		row := x[1:n]
-		total := x[0]
-		for j, v := range row {
-			row[j] = total - float64(j+1)*v
-			total += v
-		}
-		x[0] = total
 	}
 }
 
@@ -94,124 +157,4 @@ func fours(x []float64, stride int) {
 			a[i], b[i], c[i], d[i] = (p+q)+(r+s), (p-q)+(r-s), (p+q)-(r+s), (p-q)-(r-s)
 		}
 	}
-}
-
-// fold squares the contrasts x that transform left, divides them by the squares of their lengths, and adds up what
-// belongs to the same subset of axes: those along which the contrast is not the mean. It returns one sum of squares per
-// subset, indexed by the set of its axes (bit a for axis a), and overwrites x. An axis of one level has no contrasts:
-// subsets that hold it are 0 exactly.
-func fold(x []float64, levels []int, lengths [][]float64) []float64 {
-	for i, v := range x {
-		x[i] = v * v
-	}
-	var axes []int // those with at least two levels
-	scale := 1.0
-	stride := len(x)
-	for a, n := range levels {
-		if n == 1 {
-			continue
-		}
-		axes = append(axes, a)
-		stride /= n
-		if n == 2 {
-			scale /= 2
-			continue
-		}
-		foldAxis(x, stride, lengths[a])
-		x = x[:len(x)/n*2]
-	}
-	subsets := make([]float64, 1<<len(levels))
-	for i, v := range x {
-		var set int
-		for rest := uint(i); rest != 0; rest &= rest - 1 { //nolint:gosec // i is an index
-			set |= 1 << axes[len(axes)-1-bits.TrailingZeros(rest)]
-		}
-		subsets[set] = v * scale
-	}
-	return subsets
-}
-
-// inverseLengths returns, for an axis of n levels, 1 / the square of the length of each contrast: 1/n and 1/(j(j+1)).
-func inverseLengths(n int) []float64 {
-	w := make([]float64, n)
-	w[0] = 1 / float64(n)
-	for j := 1; j < n; j++ {
-		w[j] = 1 / (float64(j) * float64(j+1))
-	}
-	return w
-}
-
-// foldAxis folds the axis with the given stride to two elements: x becomes the array with
-//
-//	element 0: w₀x₀
-//	element 1: Σ wⱼxⱼ  over j ≥ 1
-//
-// along that axis. The new array fills the front of x.
-func foldAxis(x []float64, stride int, w []float64) {
-	n := len(w)
-	to := 0
-	for first := 0; first < len(x); first += n * stride {
-		block := x[first : first+n*stride]
-		if stride == 1 {
-			// The right-hand sides are computed first: both ends may lie in the block.
-			x[to], x[to+1] = w[0]*block[0], weightedSum(w[1:], block[1:])
-		} else {
-			for low := 0; low < stride; low += strip {
-				width := min(strip, stride-low)
-				foldStrip(x[to+low:][:width], x[to+stride+low:][:width], block[low:], stride, w)
-			}
-		}
-		to += 2 * stride
-	}
-}
-
-// foldBlock is the number of terms that are added up plainly before they join a sum of twice a double's digits.
-const foldBlock = 32
-
-// foldStrip folds some neighbouring columns of a block into mean and rest.
-func foldStrip(mean, rest, block []float64, stride int, w []float64) {
-	var buffer, low, part [strip]float64
-	hi, lo, sum := buffer[:len(rest)], low[:len(rest)], part[:len(rest)]
-	for j := 1; j < len(w); {
-		clear(sum)
-		for end := min(j+foldBlock, len(w)); j < end; j++ {
-			weight := w[j]
-			for i, v := range block[j*stride:][:len(sum)] {
-				sum[i] += weight * v
-			}
-		}
-		for i, s := range sum {
-			p := pair{hi[i], lo[i]}.add(s)
-			hi[i], lo[i] = p.hi, p.lo
-		}
-	}
-	for i, v := range block[:len(mean)] {
-		mean[i] = w[0] * v
-	}
-	for i := range rest {
-		rest[i] = hi[i] + lo[i]
-	}
-}
-
-// weightedSum returns Σ wⱼxⱼ.
-func weightedSum(w, x []float64) float64 {
-	var total pair
-	for len(x) > foldBlock {
-		total = total.add(plainSum(w[:foldBlock], x[:foldBlock]))
-		w, x = w[foldBlock:], x[foldBlock:]
-	}
-	return total.add(plainSum(w, x)).value()
-}
-
-func plainSum(w, x []float64) float64 {
-	var even, odd float64
-	x = x[:len(w)]
-	for ; len(w) >= 2; w, x = w[2:], x[2:] {
-		even += w[0] * x[0]
-		odd += w[1] * x[1]
-	}
-	if len(w) > 0 {
-		even += w[0] * x[0]
-	}
-	return even + odd
 }

@@ -23,14 +23,15 @@ import (
 type Kernel struct {
 	grid       *data.Grid
 	levels     []int
-	lengths    [][]float64 // by factor: what the contrasts along its axis are divided by
+	axes       *axes
 	cells      int
 	replicates int
 	ordered    bool     // the rows stand in the order of the cells
 	index      []uint32 // cell of every row; nil where it is found again block by block
 
 	means []float64 // scratch: one per cell
-	sums  []pair    // scratch: one per cell, for rows in any order
+	sums  []cell    // scratch: one per cell, for rows in any order
+	carry []pair    // scratch: one per cell, for many rows per cell in any order
 	block []float64 // scratch: one per block of a long cell, for rows in cell order
 }
 
@@ -41,15 +42,15 @@ func NewKernel(g *data.Grid) *Kernel {
 	k := &Kernel{grid: g, cells: int(d.Cells()), replicates: int(d.Replicates())}
 	for _, f := range d.Factors() {
 		k.levels = append(k.levels, int(f.Levels))
-		k.lengths = append(k.lengths, inverseLengths(int(f.Levels)))
 	}
 	if int64(g.Rows) != d.Observations() || len(g.Axes) != len(k.levels) {
 		panic(fmt.Sprintf("fit: a grid of %d rows and %d axes for a design of %d observations and %d factors", g.Rows, len(g.Axes), d.Observations(), len(k.levels)))
 	}
+	k.axes = newAxes(k.levels)
 	k.ordered = inCellOrder(g, k.levels, k.replicates)
 	if !k.ordered && len(g.Responses) > 1 {
 		k.index = make([]uint32, g.Rows)
-		g.Cells(k.index, 0)
+		cellsOf(g, k.index, 0)
 	}
 	return k
 }
@@ -121,8 +122,7 @@ func (k *Kernel) decompose(ctx context.Context, y []float64) (*Sums, error) {
 // effects returns the sum of squares of every subset of axes, from the cell means x as distances from about their mean;
 // it overwrites x.
 func (k *Kernel) effects(x []float64) []float64 {
-	transform(x, k.levels)
-	subsets := fold(x, k.levels, k.lengths)
+	subsets := k.axes.sumsOfSquares(x, len(k.levels))
 	for m := range subsets {
 		subsets[m] *= float64(k.replicates)
 	}
@@ -141,7 +141,7 @@ func (k *Kernel) cellMeans(y []float64) (within, origin float64) {
 	case k.ordered:
 		return k.orderedMeans(y, origin), origin
 	case k.replicates == 1:
-		k.eachBlock(func(first int, cells []uint32) { placeSingles(k.means, cells, y[first:], origin) })
+		k.placeSingles(y, origin)
 		return 0, origin
 	}
 	return k.scatteredMeans(y, origin), origin

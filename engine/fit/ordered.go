@@ -1,8 +1,12 @@
 package fit
 
-// longest is the number of readings of a cell that are handled at once: few enough to stay in the nearest cache for a
-// second look, so few that plain sums of them lose nothing.
-const longest = 1024
+const (
+	// longest is the number of readings of a cell that are handled at once: few enough to stay in the nearest cache for a
+	// second look, so few that plain sums of them lose nothing.
+	longest = 1024
+	// shortest is the number of readings up to which calling a function for each cell costs more than the cell.
+	shortest = 24
+)
 
 // orderedMeans is cellMeans for rows that stand in cell order.
 func (k *Kernel) orderedMeans(y []float64, origin float64) float64 {
@@ -15,6 +19,8 @@ func (k *Kernel) orderedMeans(y []float64, origin float64) float64 {
 		return 0
 	case r == 2:
 		return pairsInOrder(x, y, origin)
+	case r <= shortest:
+		return shortCellsInOrder(x, y, r, origin)
 	case r <= longest:
 		return cellsInOrder(x, y, r, origin)
 	}
@@ -44,6 +50,47 @@ func pairsInOrder(x, y []float64, origin float64) float64 {
 		}
 		within = within.add(part / 2)
 		x, y = x[n:], y[2*n:]
+	}
+	return within.value()
+}
+
+// shortCellsInOrder is cellsInOrder for cells of at most shortest readings.
+func shortCellsInOrder(x, y []float64, r int, origin float64) float64 {
+	const stretch = 32
+	n := float64(r)
+	var within pair
+	for len(x) > 0 {
+		cells := x[:min(stretch, len(x))]
+		var part float64
+		for c := range cells {
+			readings := y[:r]
+			y = y[r:]
+			first := readings[0]
+			var s0, s1, q0, q1 float64
+			i := 1
+			for ; i+1 < len(readings); i += 2 {
+				d, e := readings[i]-first, readings[i+1]-first
+				s0 += d
+				q0 += d * d
+				s1 += e
+				q1 += e * e
+			}
+			if i < len(readings) {
+				d := readings[i] - first
+				s0 += d
+				q0 += d * d
+			}
+			s, q := s0+s1, q0+q1
+			mean := s / n
+			ss := q - s*mean
+			if ss < q/8 {
+				mean, ss = meanAndSS(readings, first)
+			}
+			cells[c] = (first - origin) + mean
+			part += ss
+		}
+		within = within.add(part)
+		x = x[len(cells):]
 	}
 	return within.value()
 }
@@ -96,13 +143,13 @@ func (k *Kernel) longCell(y []float64) (mean, ss float64) {
 func meanAndSS(y []float64, origin float64) (mean, ss float64) {
 	n := float64(len(y))
 	s, q := moments(y, origin)
-	if s*s > 0.875*n*q {
-		mean = s / n
-		better := origin + mean
-		s, q = moments(y, better)
-		return (better - origin) + s/n, max(q-s*s/n, 0)
+	mean = s / n
+	if ss = q - s*mean; ss >= q/8 {
+		return mean, ss
 	}
-	return s / n, max(q-s*s/n, 0)
+	better := origin + mean
+	s, q = moments(y, better)
+	return (better - origin) + s/n, max(q-s*s/n, 0)
 }
 
 // moments returns Σ (y − origin) and Σ (y − origin)².

@@ -2,111 +2,150 @@ package fit
 
 import "math"
 
-// rowBlock is the number of rows whose cells are found at once: their indexes stay in the nearest cache.
-const rowBlock = 1024
+const (
+	// rowBlock is the number of rows whose cells are found at once: their indexes stay in the nearest cache.
+	rowBlock = 1024
+	// longSum is the number of readings of a cell that are added up plainly: the error of such a sum is about ten units in
+	// the last place at worst. Longer ones are carried over into sums of twice a double's digits.
+	longSum = 1024
+	// smallStudy is the number of rows below which a second look at the data costs nothing worth saving.
+	smallStudy = 1 << 16
+)
 
-// eachBlock calls f with the cells of rows first, first+1, … for block after block of rows.
-func (k *Kernel) eachBlock(f func(first int, cells []uint32)) {
-	var buffer [rowBlock]uint32
-	for first := 0; first < k.grid.Rows; first += rowBlock {
-		n := min(rowBlock, k.grid.Rows-first)
-		if k.index != nil {
-			f(first, k.index[first:first+n])
-			continue
-		}
-		k.grid.Cells(buffer[:n], first)
-		f(first, buffer[:n])
-	}
+// cell gathers the readings of one cell as distances from its presumed mean.
+type cell struct{ mean, sum float64 }
+
+// add adds a reading and returns the square of its distance.
+func (c *cell) add(reading float64) float64 {
+	d := reading - c.mean
+	c.sum += d
+	return d * d
 }
 
-func placeSingles(x []float64, cells []uint32, y []float64, origin float64) {
-	for i, c := range cells {
-		x[c] = y[i] - origin
-	}
-}
-
-// scatteredMeans is cellMeans for rows in any order. The sums of the cells carry twice a double's digits, so that neither
-// the number of replicates nor the order of the rows matters.
+// scatteredMeans is cellMeans for rows in any order:
+//
+//	within = Σ (y − m)² − Σ over cells of (Σ (y − m))² / replicates
+//
+// where the presumed means m are the origin first. Where the difference is a small part of the first sum and so would lose
+// digits, the rows are gone through again about the means just found, and a third time where all replicates of a cell are
+// equal, which gives 0 exactly.
 func (k *Kernel) scatteredMeans(y []float64, origin float64) float64 {
 	if k.sums == nil {
-		k.sums = make([]pair, k.cells)
+		k.sums = make([]cell, k.cells)
 	}
-	clear(k.sums)
-	var total pair // Σ (y − origin)²
-	k.eachBlock(func(first int, cells []uint32) {
-		total = total.add(gather(k.sums, cells, y[first:], origin))
-	})
-	between := k.divide()
-	within := total.value() - between
-	if within > total.value()/8 || math.IsNaN(within) {
-		return within
+	for c := range k.sums {
+		k.sums[c] = cell{mean: origin}
 	}
-	// The cells explain most: the difference would lose digits, so look again at the distances from the cell means.
-	var again pair
-	k.eachBlock(func(first int, cells []uint32) {
-		again = again.add(squaresAbout(k.sums, cells, y[first:], origin))
-	})
-	return again.value()
+	limit := 1. / 16
+	if len(y) <= smallStudy {
+		limit = 1. / 2
+	}
+	var within float64
+	for range 3 {
+		all := k.gather(y)
+		within = all - k.center(origin)
+		if within > limit*all || math.IsNaN(within) {
+			break
+		}
+	}
+	return max(within, 0)
 }
 
-// divide turns k.sums into means, fills k.means, and returns Σ sum²/replicates.
-func (k *Kernel) divide() float64 {
+// gather adds all readings to their cells and returns the sum of squares of their distances.
+func (k *Kernel) gather(y []float64) float64 {
+	every := len(y) // rows between two carries
+	if k.replicates > longSum {
+		every = max(longSum, 16*k.cells) / rowBlock * rowBlock
+		if k.carry == nil {
+			k.carry = make([]pair, k.cells)
+		}
+		clear(k.carry)
+	}
+	var squares pair
+	var buffer [rowBlock]uint32
+	axes, narrow := shortAxes(k.grid, k.cells)
+	for first := 0; first < len(y); first += rowBlock {
+		part := y[first:min(first+rowBlock, len(y))]
+		if narrow && len(part) == rowBlock {
+			squares = squares.add(axes.scan(k.sums, (*[rowBlock]float64)(part), first))
+		} else {
+			squares = squares.add(scan(k.sums, k.indexes(buffer[:len(part)], first), part))
+		}
+		if every < len(y) && (first+rowBlock)%every == 0 {
+			k.carryOver()
+		}
+	}
+	if every < len(y) {
+		k.carryOver()
+	}
+	return squares.value()
+}
+
+// indexes returns the cells of rows first, first+1, … as many as the buffer holds.
+func (k *Kernel) indexes(buffer []uint32, first int) []uint32 {
+	if k.index != nil {
+		return k.index[first : first+len(buffer)]
+	}
+	cellsOf(k.grid, buffer, first)
+	return buffer
+}
+
+// scan adds a block of readings to their cells.
+func scan(cells []cell, index []uint32, y []float64) float64 {
+	y = y[:len(index)]
+	var p, q float64
+	i := 0
+	for ; i+1 < len(index); i += 2 {
+		p += cells[index[i]].add(y[i])
+		q += cells[index[i+1]].add(y[i+1])
+	}
+	if i < len(index) {
+		p += cells[index[i]].add(y[i])
+	}
+	return p + q
+}
+
+// carryOver moves the cells' sums into k.carry.
+func (k *Kernel) carryOver() {
+	for c := range k.sums {
+		k.carry[c] = k.carry[c].add(k.sums[c].sum)
+		k.sums[c].sum = 0
+	}
+}
+
+// center fills k.means, as distances from the origin, makes the means just found the presumed ones, and returns
+// Σ sum²/replicates.
+func (k *Kernel) center(origin float64) float64 {
 	const stretch = 64
 	r := float64(k.replicates)
+	if k.replicates > longSum {
+		for c := range k.sums {
+			k.sums[c].sum = k.carry[c].value()
+		}
+	}
 	var between pair
 	for first := 0; first < k.cells; first += stretch {
+		var part float64
 		sums := k.sums[first:min(first+stretch, k.cells)]
 		means := k.means[first : first+len(sums)]
-		var part float64
-		for c, p := range sums {
-			s := p.value()
-			part += s * s
-			sums[c] = p.over(r)
-			means[c] = sums[c].value()
+		for c, s := range sums {
+			part += s.sum * s.sum
+			step := s.sum / r
+			means[c] = (s.mean - origin) + step
+			sums[c] = cell{mean: s.mean + step}
 		}
 		between = between.add(part)
 	}
 	return between.value() / r
 }
 
-// gather adds the rows of a block to the sums of their cells, and returns Σ (y − origin)² over the block.
-func gather(sums []pair, cells []uint32, y []float64, origin float64) float64 {
-	y = y[:len(cells)]
-	var even, odd float64
-	i := 0
-	for ; i+1 < len(cells); i += 2 {
-		d, e := y[i]-origin, y[i+1]-origin
-		p := &sums[cells[i]]
-		*p = p.add(d)
-		even += d * d
-		p = &sums[cells[i+1]]
-		*p = p.add(e)
-		odd += e * e
+// placeSingles is scatteredMeans for one reading per cell.
+func (k *Kernel) placeSingles(y []float64, origin float64) {
+	var buffer [rowBlock]uint32
+	for first := 0; first < len(y); first += rowBlock {
+		part := y[first:min(first+rowBlock, len(y))]
+		for i, c := range k.indexes(buffer[:len(part)], first) {
+			k.means[c] = part[i] - origin
+		}
 	}
-	if i < len(cells) {
-		d := y[i] - origin
-		sums[cells[i]] = sums[cells[i]].add(d)
-		even += d * d
-	}
-	return even + odd
-}
-
-// squaresAbout returns the sum of squares of a block's rows about the means of their cells.
-func squaresAbout(means []pair, cells []uint32, y []float64, origin float64) float64 {
-	y = y[:len(cells)]
-	var even, odd float64
-	i := 0
-	for ; i+1 < len(cells); i += 2 {
-		p, o := means[cells[i]], means[cells[i+1]]
-		d := ((y[i] - origin) - p.hi) - p.lo
-		e := ((y[i+1] - origin) - o.hi) - o.lo
-		even += d * d
-		odd += e * e
-	}
-	if i < len(cells) {
-		p := means[cells[i]]
-		d := ((y[i] - origin) - p.hi) - p.lo
-		even += d * d
-	}
-	return even + odd
 }

@@ -1,7 +1,5 @@
 package fit
 
-import "math"
-
 // pair is an unevaluated sum of two doubles, hi + lo, that carries about twice a double's digits.
 type pair struct{ hi, lo float64 }
 
@@ -16,29 +14,29 @@ func (p pair) add(x float64) pair {
 // value returns p rounded to a double.
 func (p pair) value() float64 { return p.hi + p.lo }
 
-// over returns p/n, n a whole number, to about twice a double's digits; exactly if the quotient is a double.
-func (p pair) over(n float64) pair {
-	hi := p.value() / n
-	// p − hi·n, its product exact.
-	product := hi * n
-	rest := (p.hi - product) - math.FMA(hi, n, -product) + p.lo
-	lo := rest / n
-	sum := hi + lo
-	return pair{sum, lo - (sum - hi)}
-}
-
-// sum adds x in blocks, the blocks' sums as a pair: within two units in the last place of Σ|x| for any length.
+// sum adds x in blocks, the blocks' sums as a pair: within a few units in the last place of Σ|x| for any length.
 func sum(x []float64) float64 {
 	const block = 64
 	var total pair
 	for len(x) > 0 {
 		n := min(block, len(x))
-		var part float64
-		for _, v := range x[:n] {
-			part += v
-		}
-		total = total.add(part)
+		total = total.add(unrolled(x[:n]))
 		x = x[n:]
 	}
 	return total.value()
+}
+
+// unrolled adds x plainly.
+func unrolled(x []float64) float64 {
+	var a, b, c, d float64
+	for ; len(x) >= 4; x = x[4:] {
+		a += x[0]
+		b += x[1]
+		c += x[2]
+		d += x[3]
+	}
+	for _, v := range x {
+		a += v
+	}
+	return (a + b) + (c + d)
 }
