@@ -28,7 +28,7 @@ func stretch(tail, df float64) float64 { return df / prob.ChiSquareLowerQuantile
 //	upper = γ + √(Σ H²a² + Σ G²b² + ΣΣ H(a,b)·a·b + ΣΣ H*(b,b′)·b·b′)
 //
 // where G = 1 − 1/F(α; n, ∞) and H = 1/F(1 − α; n, ∞) − 1, and the joint terms make the limits exact when all but the two
-// parts at hand vanish. A radicand below 0, which the joint terms can bring about by rounding, counts as 0.
+// parts at hand vanish; a sum without negative parts has none. A radicand below 0, which the joint terms can bring about by rounding, counts as 0.
 func largeSample(weight, ms, df []float64, tail float64) (lower, upper float64) {
 	var plus, minus []part
 	estimate := 0.0
@@ -63,6 +63,9 @@ func side(near, far []part, joint func(near, far part) float64, tail float64) fl
 		sum += square(a.g * a.size)
 		for _, b := range far {
 			sum += joint(a, b) * a.size * b.size
+		}
+		if len(far) == 0 {
+			continue // a sum alone: Graybill and Wang's limits have no joint terms
 		}
 		for _, c := range near[i+1:] {
 			n := a.df + c.df
