@@ -42,15 +42,29 @@ func leftOver(n int, f func(left, m, right, p int)) {
 	}
 }
 
+// mergeFour merges neighbouring columns of four levels.
+func mergeFour(a, b, c, d []float64) {
+	b, c, d = b[:len(a)], c[:len(a)], d[:len(a)]
+	for i, p := range a {
+		q, r, s := b[i], c[i], d[i]
+		left, right := p+q, r+s
+		a[i], b[i], c[i], d[i] = left+right, p-q, left-right, r-s
+	}
+}
+
 // contrast transforms a block of n·stride elements along its first axis.
 func contrast(x []float64, n, stride int) {
 	for low := 0; low < stride; low += strip {
 		width := min(strip, stride-low)
 		row := func(level int) []float64 { return x[level*stride+low:][:width] }
-		for count := 2; count <= n; count += 2 {
-			for m := 1; count&m == 0; m *= 2 {
+		for count := 4; count <= n; count += 4 {
+			mergeFour(row(count-4), row(count-3), row(count-2), row(count-1))
+			for m := 4; count&m == 0; m *= 2 {
 				merge(row(count-2*m), row(count-m), m, m)
 			}
+		}
+		if n&2 != 0 {
+			merge(row(n&^3), row(n&^3+1), 1, 1)
 		}
 		leftOver(n, func(left, m, right, p int) { merge(row(left), row(right), m, p) })
 	}
@@ -59,7 +73,16 @@ func contrast(x []float64, n, stride int) {
 // contrastRow transforms along one row.
 func contrastRow(x []float64) {
 	n := len(x)
-	for m := 1; 2*m <= n; m *= 2 {
+	for rest := x; len(rest) >= 4; rest = rest[4:] {
+		p, q, r, s := rest[0], rest[1], rest[2], rest[3]
+		left, right := p+q, r+s
+		rest[0], rest[1], rest[2], rest[3] = left+right, p-q, left-right, r-s
+	}
+	if n&2 != 0 {
+		pair := x[n&^3:]
+		pair[0], pair[1] = pair[0]+pair[1], pair[0]-pair[1]
+	}
+	for m := 4; 2*m <= n; m *= 2 {
 		for left, right := 0, m; right+m <= n; left, right = left+2*m, right+2*m {
 			l, r := x[left], x[right]
 			x[left], x[right] = l+r, l-r

@@ -15,25 +15,36 @@ func squareStrip(x []float64, width, stride int, w []float64) {
 	var high, low, part [strip]float64
 	hi, lo, sum := high[:width], low[:width], part[:width]
 	row := func(level int) []float64 { return x[level*stride:][:width] }
-	merges := 0
-	square := func(left, m, right, p int) {
-		mergeSquare(row(left), row(right), m, p, sum, w[right])
-		if merges++; merges%foldBlock == 0 {
+	n := len(w)
+	for count := 4; count <= n; count += 4 {
+		squareFour(row(count-4), row(count-3), row(count-2), row(count-1), sum)
+		for m := 4; count&m == 0; m *= 2 {
+			mergeSquare(row(count-2*m), row(count-m), m, m, sum, w[count-m])
+		}
+		if count%foldBlock == 0 {
 			carry(hi, lo, sum)
 		}
 	}
-	n := len(w)
-	for count := 2; count <= n; count += 2 {
-		for m := 1; count&m == 0; m *= 2 {
-			square(count-2*m, m, count-m, m)
-		}
+	if n&2 != 0 {
+		mergeSquare(row(n&^3), row(n&^3+1), 1, 1, sum, 1./2)
 	}
-	leftOver(n, square)
+	leftOver(n, func(left, m, right, p int) { mergeSquare(row(left), row(right), m, p, sum, w[right]) })
 	carry(hi, lo, sum)
 	mean, rest := row(0), row(1)
 	for i, s := range mean {
 		mean[i] = s * s * w[0]
 		rest[i] = hi[i] + lo[i]
+	}
+}
+
+// squareFour is mergeFour with the squared contrasts, times their weights, added to sum and not kept.
+func squareFour(a, b, c, d, sum []float64) {
+	b, c, d, sum = b[:len(a)], c[:len(a)], d[:len(a)], sum[:len(a)]
+	for i, p := range a {
+		q, r, s := b[i], c[i], d[i]
+		left, right := p+q, r+s
+		a[i] = left + right
+		sum[i] += ((p-q)*(p-q)+(r-s)*(r-s))/2 + (left-right)*(left-right)/4
 	}
 }
 
@@ -91,7 +102,7 @@ func foldAxis(x []float64, stride int, w []float64) {
 }
 
 // foldBlock is the number of terms that are added up plainly before they join a sum of twice a double's digits.
-const foldBlock = 32
+const foldBlock = 16
 
 // foldStrip folds some neighbouring columns of a block into mean and rest.
 func foldStrip(mean, rest, block []float64, stride int, w []float64) {

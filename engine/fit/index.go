@@ -41,8 +41,9 @@ func addAxis[T uint8 | uint16 | uint32](dst []uint32, codes []T, stride uint32) 
 
 func addThree(dst []uint32, codes [3][]uint8, strides [3]uint32) {
 	a, b, c := codes[0][:len(dst)], codes[1][:len(dst)], codes[2][:len(dst)]
-	for i := range dst {
-		dst[i] += uint32(a[i])*strides[0] + uint32(b[i])*strides[1] + uint32(c[i])*strides[2]
+	u, v, w := strides[0], strides[1], strides[2]
+	for i, at := range dst {
+		dst[i] = at + uint32(a[i])*u + uint32(b[i])*v + uint32(c[i])*w
 	}
 }
 
@@ -76,7 +77,7 @@ func shortAxes(g *data.Grid, cells int) (short, bool) {
 const even = 0x00ff_00ff_00ff_00ff
 
 // scan is the function scan for the rowBlock rows from first.
-func (s *short) scan(cells []cell, y *[rowBlock]float64, first int) float64 {
+func (s *short) scan(cells []cell, y *[rowBlock]float64, first int, squares pair) pair {
 	a, b, c := (*[rowBlock]uint8)(s.codes[0][first:]), (*[rowBlock]uint8)(s.codes[1][first:]), (*[rowBlock]uint8)(s.codes[2][first:])
 	u, v, w := s.strides[0], s.strides[1], s.strides[2]
 	var p, q float64
@@ -92,6 +93,10 @@ func (s *short) scan(cells []cell, y *[rowBlock]float64, first int) float64 {
 		q += cells[uint16(f>>32)].add(y[i+5])              //nolint:gosec // one lane
 		p += cells[e>>48].add(y[i+6])
 		q += cells[f>>48].add(y[i+7])
+		if i%plain == plain-8 {
+			squares = squares.add(p + q)
+			p, q = 0, 0
+		}
 	}
-	return p + q
+	return squares
 }

@@ -2,7 +2,7 @@ package fit
 
 const (
 	// longest is the number of readings of a cell that are handled at once: few enough to stay in the nearest cache for a
-	// second look, so few that plain sums of them lose nothing.
+	// second look.
 	longest = 1024
 	// shortest is the number of readings up to which calling a function for each cell costs more than the cell.
 	shortest = 24
@@ -36,7 +36,7 @@ func (k *Kernel) orderedMeans(y []float64, origin float64) float64 {
 
 // pairsInOrder is for two readings per cell.
 func pairsInOrder(x, y []float64, origin float64) float64 {
-	const stretch = 64
+	const stretch = 16
 	var within pair
 	for len(x) > 0 {
 		n := min(stretch, len(x))
@@ -56,7 +56,7 @@ func pairsInOrder(x, y []float64, origin float64) float64 {
 
 // shortCellsInOrder is cellsInOrder for cells of at most shortest readings.
 func shortCellsInOrder(x, y []float64, r int, origin float64) float64 {
-	const stretch = 32
+	const stretch = 16
 	n := float64(r)
 	var within pair
 	for len(x) > 0 {
@@ -97,7 +97,7 @@ func shortCellsInOrder(x, y []float64, r int, origin float64) float64 {
 
 // cellsInOrder is for cells of r readings, at most longest.
 func cellsInOrder(x, y []float64, r int, origin float64) float64 {
-	const stretch = 32
+	const stretch = 16
 	var within pair
 	for len(x) > 0 {
 		n := min(stretch, len(x))
@@ -154,6 +154,20 @@ func meanAndSS(y []float64, origin float64) (mean, ss float64) {
 
 // moments returns Σ (y − origin) and Σ (y − origin)².
 func moments(y []float64, origin float64) (s, q float64) {
+	if len(y) <= plain {
+		return plainMoments(y, origin)
+	}
+	var sum, squares pair
+	for len(y) > 0 {
+		part := y[:min(plain, len(y))]
+		s, q := plainMoments(part, origin)
+		sum, squares = sum.add(s), squares.add(q)
+		y = y[len(part):]
+	}
+	return sum.value(), squares.value()
+}
+
+func plainMoments(y []float64, origin float64) (s, q float64) {
 	var s0, s1, s2, s3, q0, q1, q2, q3 float64
 	for ; len(y) >= 4; y = y[4:] {
 		d0, d1, d2, d3 := y[0]-origin, y[1]-origin, y[2]-origin, y[3]-origin

@@ -5,9 +5,10 @@ import "math"
 const (
 	// rowBlock is the number of rows whose cells are found at once: their indexes stay in the nearest cache.
 	rowBlock = 1024
-	// longSum is the number of readings of a cell that are added up plainly: the error of such a sum is about ten units in
-	// the last place at worst. Longer ones are carried over into sums of twice a double's digits.
-	longSum = 1024
+	// longSum is the number of readings of a cell that are added up plainly. Longer sums are carried over into pairs after
+	// every so many rows that the work is a small part of that on the rows.
+	longSum     = 64
+	rowsPerCell = 16
 	// smallStudy is the number of rows below which a second look at the data costs nothing worth saving.
 	smallStudy = 1 << 16
 )
@@ -55,7 +56,7 @@ func (k *Kernel) scatteredMeans(y []float64, origin float64) float64 {
 func (k *Kernel) gather(y []float64) float64 {
 	every := len(y) // rows between two carries
 	if k.replicates > longSum {
-		every = max(longSum, 16*k.cells) / rowBlock * rowBlock
+		every = max(1, rowsPerCell*k.cells/rowBlock) * rowBlock
 		if k.carry == nil {
 			k.carry = make([]pair, k.cells)
 		}
@@ -67,9 +68,9 @@ func (k *Kernel) gather(y []float64) float64 {
 	for first := 0; first < len(y); first += rowBlock {
 		part := y[first:min(first+rowBlock, len(y))]
 		if narrow && len(part) == rowBlock {
-			squares = squares.add(axes.scan(k.sums, (*[rowBlock]float64)(part), first))
+			squares = axes.scan(k.sums, (*[rowBlock]float64)(part), first, squares)
 		} else {
-			squares = squares.add(scan(k.sums, k.indexes(buffer[:len(part)], first), part))
+			squares = scan(k.sums, k.indexes(buffer[:len(part)], first), part, squares)
 		}
 		if every < len(y) && (first+rowBlock)%every == 0 {
 			k.carryOver()
@@ -90,8 +91,17 @@ func (k *Kernel) indexes(buffer []uint32, first int) []uint32 {
 	return buffer
 }
 
-// scan adds a block of readings to their cells.
-func scan(cells []cell, index []uint32, y []float64) float64 {
+// scan adds a block of readings to their cells, and the squares of their distances to those so far.
+func scan(cells []cell, index []uint32, y []float64, squares pair) pair {
+	for len(index) > 0 {
+		n := min(plain, len(index))
+		squares = squares.add(scanPart(cells, index[:n], y[:n]))
+		index, y = index[n:], y[n:]
+	}
+	return squares
+}
+
+func scanPart(cells []cell, index []uint32, y []float64) float64 {
 	y = y[:len(index)]
 	var p, q float64
 	i := 0
@@ -116,7 +126,7 @@ func (k *Kernel) carryOver() {
 // center fills k.means, as distances from the origin, makes the means just found the presumed ones, and returns
 // Σ sum²/replicates.
 func (k *Kernel) center(origin float64) float64 {
-	const stretch = 64
+	const stretch = 16
 	r := float64(k.replicates)
 	if k.replicates > longSum {
 		for c := range k.sums {

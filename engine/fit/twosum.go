@@ -1,5 +1,9 @@
 package fit
 
+// plain is the number of values that are added up plainly, four sums in turn, before they join a pair. Readings are often
+// round numbers that recur: the rounding of each addition is then the same, and adds up with their number.
+const plain = 64
+
 // pair is an unevaluated sum of two doubles, hi + lo, that carries about twice a double's digits.
 type pair struct{ hi, lo float64 }
 
@@ -16,10 +20,9 @@ func (p pair) value() float64 { return p.hi + p.lo }
 
 // sum adds x in blocks, the blocks' sums as a pair: within a few units in the last place of Σ|x| for any length.
 func sum(x []float64) float64 {
-	const block = 64
 	var total pair
 	for len(x) > 0 {
-		n := min(block, len(x))
+		n := min(plain, len(x))
 		total = total.add(unrolled(x[:n]))
 		x = x[n:]
 	}
