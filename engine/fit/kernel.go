@@ -94,6 +94,9 @@ func (k *Kernel) scaled(ctx context.Context, y []float64, plain *Sums) (*Sums, e
 	if err != nil {
 		return nil, err
 	}
+	if s.Total == 0 {
+		return plain, nil
+	}
 	s.Mean = math.Ldexp(s.Mean, exponent)
 	s.Exponent = exponent
 	return s, nil

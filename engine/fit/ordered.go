@@ -67,16 +67,15 @@ func shortCellsInOrder(x, y []float64, r int, origin float64) float64 {
 			y = y[r:]
 			first := readings[0]
 			var s0, s1, q0, q1 float64
-			i := 1
-			for ; i+1 < len(readings); i += 2 {
+			for i := 1; i < len(readings)-1; i += 2 {
 				d, e := readings[i]-first, readings[i+1]-first
 				s0 += d
 				q0 += d * d
 				s1 += e
 				q1 += e * e
 			}
-			if i < len(readings) {
-				d := readings[i] - first
+			if len(readings)%2 == 0 {
+				d := readings[len(readings)-1] - first
 				s0 += d
 				q0 += d * d
 			}

@@ -54,9 +54,9 @@ func (k *Kernel) scatteredMeans(y []float64, origin float64) float64 {
 
 // gather adds all readings to their cells and returns the sum of squares of their distances.
 func (k *Kernel) gather(y []float64) float64 {
-	every := len(y) // rows between two carries
-	if k.replicates > longSum {
-		every = max(1, rowsPerCell*k.cells/rowBlock) * rowBlock
+	long := k.replicates > longSum
+	every := max(1, rowsPerCell*k.cells/rowBlock) * rowBlock // rows between two carries
+	if long {
 		if k.carry == nil {
 			k.carry = make([]pair, k.cells)
 		}
@@ -72,11 +72,11 @@ func (k *Kernel) gather(y []float64) float64 {
 		} else {
 			squares = scan(k.sums, k.indexes(buffer[:len(part)], first), part, squares)
 		}
-		if every < len(y) && (first+rowBlock)%every == 0 {
+		if long && (first+rowBlock)%every == 0 {
 			k.carryOver()
 		}
 	}
-	if every < len(y) {
+	if long {
 		k.carryOver()
 	}
 	return squares.value()
