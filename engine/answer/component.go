@@ -57,7 +57,7 @@ func (a *analyst) withoutLine(e ems.Estimator) string {
 }
 
 // largeSubtraction is the share of an error combination, in the difference form, that may be subtracted before the test
-// gets a caution.
+// gets a caution. A simulation in the tests supports it; Gaylor and Hopper (1969) treat the case of two lines.
 const largeSubtraction = 0.5
 
 // findings says what a reader of the table should know.
@@ -75,7 +75,7 @@ func (a *analyst) findings(table *fit.Table) []api.Finding {
 		case r.Trouble == fit.ZeroError || r.Trouble == fit.ZeroByZero:
 			add(api.NoErrorVariation, api.Caution, []engine.Set{r.Set}, "The error line of %s shows no variation at all, so there is no test. Look whether the readings were rounded, copied or truncated.", name)
 		case r.Subtracted > largeSubtraction:
-			add(api.LargeSubtraction, api.Caution, []engine.Set{r.Set}, "The error of the test of %s is a difference in which the part subtracted is %.0f%% of the part it is subtracted from. Satterthwaite's approximation is poor there; use the sum form.", name, 100*r.Subtracted)
+			add(api.LargeSubtraction, api.Caution, []engine.Set{r.Set}, "The error of the test of %s is a difference in which the part subtracted is %.0f%% of the part it is subtracted from. Its degrees of freedom have collapsed there, so that the test hardly ever finds an effect; use the sum form.", name, 100*r.Subtracted)
 		}
 	}
 	for _, c := range table.Components {
