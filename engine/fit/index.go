@@ -47,17 +47,19 @@ func addThree(dst []uint32, codes [3][]uint8, strides [3]uint32) {
 	}
 }
 
-// short is up to three axes of narrow codes with at most 2^16 cells in all: the indexes of four rows fit one word, so
-// that eight rows cost two multiplications per axis. A missing axis is any other with stride 0.
+// short is up to three axes of narrow codes: the indexes along the last two are below 2^16, so that those of four rows fit
+// one word and eight rows cost two multiplications per axis. So are those along all three if there are at most 2^16 cells;
+// otherwise the grid is wide. A missing axis is any other with stride 0.
 type short struct {
 	codes   [3][]uint8
 	strides [3]uint64
+	wide    bool
 }
 
 // shortAxes returns the axes of a grid that is small enough for short, and whether it is.
 func shortAxes(g *data.Grid, cells int) (short, bool) {
-	var s short
-	if len(g.Axes) > len(s.codes) || cells > 1<<16 {
+	s := short{wide: cells > 1<<16}
+	if len(g.Axes) > len(s.codes) {
 		return s, false
 	}
 	for a := range s.codes {
@@ -93,7 +95,32 @@ func (s *short) scan(cells []cell, y *[rowBlock]float64, first int, squares pair
 		q += cells[uint16(f>>32)].add(y[i+5])              //nolint:gosec // one lane
 		p += cells[e>>48].add(y[i+6])
 		q += cells[f>>48].add(y[i+7])
-		if i%plain == plain-8 {
+		if i%plainTwo == plainTwo-8 {
+			squares = squares.add(p + q)
+			p, q = 0, 0
+		}
+	}
+	return squares
+}
+
+// scanWide is scan for a wide grid.
+func (s *short) scanWide(cells []cell, y *[rowBlock]float64, first int, squares pair) pair {
+	a, b, c := (*[rowBlock]uint8)(s.codes[0][first:]), (*[rowBlock]uint8)(s.codes[1][first:]), (*[rowBlock]uint8)(s.codes[2][first:])
+	u, v, w := s.strides[0], s.strides[1], s.strides[2]
+	var p, q float64
+	for i := 0; i < rowBlock; i += 8 {
+		k, l := binary.LittleEndian.Uint64(b[i:i+8]), binary.LittleEndian.Uint64(c[i:i+8])
+		e := (k&even)*v + (l&even)*w       // rows 0, 2, 4, 6
+		f := (k>>8&even)*v + (l>>8&even)*w // rows 1, 3, 5, 7
+		p += cells[uint64(a[i])*u+e&0xffff].add(y[i])
+		q += cells[uint64(a[i+1])*u+f&0xffff].add(y[i+1])
+		p += cells[uint64(a[i+2])*u+e>>16&0xffff].add(y[i+2])
+		q += cells[uint64(a[i+3])*u+f>>16&0xffff].add(y[i+3])
+		p += cells[uint64(a[i+4])*u+e>>32&0xffff].add(y[i+4])
+		q += cells[uint64(a[i+5])*u+f>>32&0xffff].add(y[i+5])
+		p += cells[uint64(a[i+6])*u+e>>48].add(y[i+6])
+		q += cells[uint64(a[i+7])*u+f>>48].add(y[i+7])
+		if i%plainTwo == plainTwo-8 {
 			squares = squares.add(p + q)
 			p, q = 0, 0
 		}

@@ -5,6 +5,7 @@ import (
 	"encoding/json"
 	"math"
 	"math/big"
+	"math/rand/v2"
 	"os"
 	"path/filepath"
 	"strconv"
@@ -36,13 +37,6 @@ func readNIST(t *testing.T, name string) nistSet {
 		t.Fatal(err)
 	}
 	defer file.Close() //nolint:errcheck // only read
-	number := func(text string) float64 {
-		x, err := strconv.ParseFloat(text, 64)
-		if err != nil {
-			t.Fatal(err)
-		}
-		return x
-	}
 	var set nistSet
 	groups := map[string]bool{}
 	scanner := bufio.NewScanner(file)
@@ -52,11 +46,11 @@ func readNIST(t *testing.T, name string) nistSet {
 		switch {
 		case n == 0:
 		case line < 60 && fields[0] == "Between":
-			set.dfBetween, set.between, set.f = number(fields[n-4]), number(fields[n-3]), number(fields[n-1])
+			set.dfBetween, set.between, set.f = number(t, fields[n-4]), number(t, fields[n-3]), number(t, fields[n-1])
 		case line < 60 && fields[0] == "Within":
-			set.dfWithin, set.within = number(fields[n-3]), number(fields[n-2])
+			set.dfWithin, set.within = number(t, fields[n-3]), number(t, fields[n-2])
 		case line < 60 && fields[0] == "Standard" && n == 3:
-			set.residualSD = number(fields[2])
+			set.residualSD = number(t, fields[2])
 		case line > 60:
 			set.groups, set.readings = append(set.groups, fields[0]), append(set.readings, fields[1])
 			groups[fields[0]] = true
@@ -126,35 +120,35 @@ func TestNIST(t *testing.T) {
 		}
 		shift, offsets := exactOffsets(t, set.readings)
 		g.Responses = []data.Response{{Shift: shift, Offsets: offsets}}
-		s, err := NewKernel(g).Sums(t.Context(), 0)
-		if err != nil {
-			t.Fatal(err)
-		}
-		between := s.Term(1)
-		msWithin := s.Within / set.dfWithin
-		f, sd := between/set.dfBetween/msWithin, math.Sqrt(msWithin)
-		e := exact[name]
-		for _, c := range []struct {
-			what           string
-			got, certified float64
-			exact          string
-		}{
-			{"SS between", between, set.between, e.SS.Between},
-			{"SS within", s.Within, set.within, e.SS.Within},
-			{"F", f, set.f, e.F.Between},
-			{"residual SD", sd, set.residualSD, e.ResidualSD},
-		} {
-			want, err := strconv.ParseFloat(c.exact, 64)
+		for _, order := range []string{"in cell order", "shuffled"} {
+			s, err := NewKernel(g).Sums(t.Context(), 0)
 			if err != nil {
 				t.Fatal(err)
 			}
-			if digits(c.got, c.certified) < 14 {
-				t.Errorf("%s: %s is %.17g, certified %.15g", name, c.what, c.got, c.certified)
+			between := s.Term(1)
+			msWithin := s.Within / set.dfWithin
+			f, sd := between/set.dfBetween/msWithin, math.Sqrt(msWithin)
+			e := exact[name]
+			for _, c := range []struct {
+				what           string
+				got, certified float64
+				exact          string
+			}{
+				{"SS between", between, set.between, e.SS.Between},
+				{"SS within", s.Within, set.within, e.SS.Within},
+				{"F", f, set.f, e.F.Between},
+				{"residual SD", sd, set.residualSD, e.ResidualSD},
+			} {
+				want := number(t, c.exact)
+				if digits(c.got, c.certified) < 14 {
+					t.Errorf("%s %s: %s is %.17g, certified %.15g", name, order, c.what, c.got, c.certified)
+				}
+				if digits(c.got, want) < 15 {
+					t.Errorf("%s %s: %s is %.17g, exactly %s", name, order, c.what, c.got, c.exact)
+				}
+				t.Logf("%s %s: %s to %.1f digits of the certified value, %.1f of the exact one", name, order, c.what, digits(c.got, c.certified), digits(c.got, want))
 			}
-			if digits(c.got, want) < 15 {
-				t.Errorf("%s: %s is %.17g, exactly %s", name, c.what, c.got, c.exact)
-			}
-			t.Logf("%s %s: %.1f digits of the certified value, %.1f of the exact one", name, c.what, digits(c.got, c.certified), digits(c.got, want))
+			shuffle(g, rand.New(rand.NewPCG(1, 1)))
 		}
 	}
 }

@@ -5,6 +5,7 @@ import (
 	"errors"
 	"math"
 	"math/rand/v2"
+	"runtime"
 	"testing"
 
 	"guardrow/engine"
@@ -266,4 +267,42 @@ func TestMismatchedGrid(t *testing.T) {
 	g := emptyGrid(crossed([]int{2, 3}, 2))
 	g.Rows--
 	NewKernel(g)
+}
+
+// TestMemory: the kernel's memory grows with the cells, not with the rows, and the number of its allocations with neither.
+func TestMemory(t *testing.T) {
+	const most = 40 // allocations
+	for _, c := range []struct {
+		levels       []int
+		replicates   int
+		bytesPerCell float64
+	}{
+		// One double per cell in cell order; two more in any order, and two again where long sums are carried over.
+		{[]int{100, 50}, 40, 8},
+		{[]int{100, 50}, 40, 24},
+		{[]int{10, 50}, 400, 40},
+	} {
+		g := emptyGrid(crossed(c.levels, c.replicates))
+		g.Responses = []data.Response{{Offsets: noise(rand.New(rand.NewPCG(1, 1)), g.Rows)}}
+		if c.bytesPerCell > 8 {
+			shuffle(g, rand.New(rand.NewPCG(1, 1)))
+		}
+		run := func() {
+			if _, err := NewKernel(g).Sums(t.Context(), 0); err != nil {
+				t.Fatal(err)
+			}
+		}
+		if got := testing.AllocsPerRun(10, run); got > most {
+			t.Errorf("%v: %v allocations", c.levels, got)
+		}
+		var before, after runtime.MemStats
+		runtime.ReadMemStats(&before)
+		run()
+		runtime.ReadMemStats(&after)
+		cells := g.Rows / c.replicates
+		// 16 kB for what depends on the factors alone.
+		if got, limit := float64(after.TotalAlloc-before.TotalAlloc), 1.1*c.bytesPerCell*float64(cells)+16e3; got > limit {
+			t.Errorf("%v: %v bytes, more than %v", c.levels, got, limit)
+		}
+	}
 }

@@ -9,7 +9,9 @@ const (
 	// every so many rows that the work is a small part of that on the rows.
 	longSum     = 64
 	rowsPerCell = 16
-	// smallStudy is the number of rows below which a second look at the data costs nothing worth saving.
+	// plainTwo is plain where two sums take turns.
+	plainTwo = plain / 2
+	// smallStudy is the number of rows up to which a second look at the data costs nothing worth saving.
 	smallStudy = 1 << 16
 )
 
@@ -27,9 +29,9 @@ func (c *cell) add(reading float64) float64 {
 //
 //	within = Σ (y − m)² − Σ over cells of (Σ (y − m))² / replicates
 //
-// where the presumed means m are the origin first. Where the difference is a small part of the first sum and so would lose
-// digits, the rows are gone through again about the means just found, and a third time where all replicates of a cell are
-// equal, which gives 0 exactly.
+// where the presumed means m are the origin first. In small studies, and where the difference is a small part of the first
+// sum and so would lose digits, the rows are gone through again about the means just found; and a third time where all
+// replicates of a cell are equal, which gives 0 exactly.
 func (k *Kernel) scatteredMeans(y []float64, origin float64) float64 {
 	if k.sums == nil {
 		k.sums = make([]cell, k.cells)
@@ -37,15 +39,15 @@ func (k *Kernel) scatteredMeans(y []float64, origin float64) float64 {
 	for c := range k.sums {
 		k.sums[c] = cell{mean: origin}
 	}
-	limit := 1. / 16
+	passes := 1
 	if len(y) <= smallStudy {
-		limit = 1. / 2
+		passes = 2
 	}
 	var within float64
-	for range 3 {
+	for pass := 1; pass <= 3; pass++ {
 		all := k.gather(y)
 		within = all - k.center(origin)
-		if within > limit*all || math.IsNaN(within) {
+		if pass >= passes && within > all/16 || math.IsNaN(within) {
 			break
 		}
 	}
@@ -67,10 +69,13 @@ func (k *Kernel) gather(y []float64) float64 {
 	axes, narrow := shortAxes(k.grid, k.cells)
 	for first := 0; first < len(y); first += rowBlock {
 		part := y[first:min(first+rowBlock, len(y))]
-		if narrow && len(part) == rowBlock {
-			squares = axes.scan(k.sums, (*[rowBlock]float64)(part), first, squares)
-		} else {
+		switch {
+		case !narrow || len(part) < rowBlock:
 			squares = scan(k.sums, k.indexes(buffer[:len(part)], first), part, squares)
+		case axes.wide:
+			squares = axes.scanWide(k.sums, (*[rowBlock]float64)(part), first, squares)
+		default:
+			squares = axes.scan(k.sums, (*[rowBlock]float64)(part), first, squares)
 		}
 		if long && (first+rowBlock)%every == 0 {
 			k.carryOver()
@@ -94,7 +99,7 @@ func (k *Kernel) indexes(buffer []uint32, first int) []uint32 {
 // scan adds a block of readings to their cells, and the squares of their distances to those so far.
 func scan(cells []cell, index []uint32, y []float64, squares pair) pair {
 	for len(index) > 0 {
-		n := min(plain, len(index))
+		n := min(plainTwo, len(index))
 		squares = squares.add(scanPart(cells, index[:n], y[:n]))
 		index, y = index[n:], y[n:]
 	}

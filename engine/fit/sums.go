@@ -1,3 +1,5 @@
+// Package fit analyses the readings of a balanced design: sums of squares without a design matrix, the fitted table with
+// its tests, and variance components. A Kernel takes a data.Grid to Sums; a Plan takes Sums to a Table.
 package fit
 
 import (
