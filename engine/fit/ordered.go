@@ -20,9 +20,9 @@ func (k *Kernel) orderedMeans(y []float64, origin float64) float64 {
 	case r == 2:
 		return pairsInOrder(x, y, origin)
 	case r <= shortest:
-		return shortCellsInOrder(x, y, r, origin)
+		return shortCellsInOrder(x, y, r, origin, k.enough())
 	case r <= longest:
-		return cellsInOrder(x, y, r, origin)
+		return cellsInOrder(x, y, r, origin, k.enough())
 	}
 	var within pair
 	r := k.replicates
@@ -55,7 +55,7 @@ func pairsInOrder(x, y []float64, origin float64) float64 {
 }
 
 // shortCellsInOrder is cellsInOrder for cells of at most shortest readings.
-func shortCellsInOrder(x, y []float64, r int, origin float64) float64 {
+func shortCellsInOrder(x, y []float64, r int, origin, enough float64) float64 {
 	const stretch = 16
 	n := float64(r)
 	var within pair
@@ -82,8 +82,8 @@ func shortCellsInOrder(x, y []float64, r int, origin float64) float64 {
 			s, q := s0+s1, q0+q1
 			mean := s / n
 			ss := q - s*mean
-			if ss < q/8 {
-				mean, ss = meanAndSS(readings, first)
+			if ss < enough*q {
+				mean, ss = meanAndSS(readings, first, enough)
 			}
 			cells[c] = (first - origin) + mean
 			part += ss
@@ -95,7 +95,7 @@ func shortCellsInOrder(x, y []float64, r int, origin float64) float64 {
 }
 
 // cellsInOrder is for cells of r readings, at most longest.
-func cellsInOrder(x, y []float64, r int, origin float64) float64 {
+func cellsInOrder(x, y []float64, r int, origin, enough float64) float64 {
 	const stretch = 16
 	var within pair
 	for len(x) > 0 {
@@ -103,7 +103,7 @@ func cellsInOrder(x, y []float64, r int, origin float64) float64 {
 		var part float64
 		for c := range x[:n] {
 			cell := y[c*r : (c+1)*r]
-			mean, ss := meanAndSS(cell, cell[0])
+			mean, ss := meanAndSS(cell, cell[0], enough)
 			x[c] = (cell[0] - origin) + mean
 			part += ss
 		}
@@ -120,7 +120,7 @@ func (k *Kernel) longCell(y []float64) (mean, ss float64) {
 	var total, within pair
 	for i := 0; i < len(y); i += longest {
 		part := y[i:min(i+longest, len(y))]
-		m, w := meanAndSS(part, y[0])
+		m, w := meanAndSS(part, y[0], k.enough())
 		k.block = append(k.block, m)
 		total = total.add(m * float64(len(part)))
 		within = within.add(w)
@@ -133,17 +133,26 @@ func (k *Kernel) longCell(y []float64) (mean, ss float64) {
 	return mean, within.value()
 }
 
+// enough returns the share of Σ (y − o)² that has to be left as the sum of squares about the mean for the difference to be
+// good; all of it in small studies, where a second look costs nothing worth saving.
+func (k *Kernel) enough() float64 {
+	if k.grid.Rows <= smallStudy {
+		return 1
+	}
+	return 1. / 8
+}
+
 // meanAndSS returns the mean of y as its distance from the origin, and the sum of squares about it:
 //
 //	Σ (y − o)² − (Σ (y − o))² / n
 //
-// with o the origin or, where the difference would be less than an eighth of the first sum, the mean found with it. If all
-// of y is equal to the origin both are 0 exactly.
-func meanAndSS(y []float64, origin float64) (mean, ss float64) {
+// with o the origin or, where the difference would be less than enough of the first sum, the mean found with it. If all of
+// y is equal to the origin both are 0 exactly.
+func meanAndSS(y []float64, origin, enough float64) (mean, ss float64) {
 	n := float64(len(y))
 	s, q := moments(y, origin)
 	mean = s / n
-	if ss = q - s*mean; ss >= q/8 {
+	if ss = q - s*mean; ss >= enough*q {
 		return mean, ss
 	}
 	better := origin + mean
