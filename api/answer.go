@@ -231,6 +231,7 @@ type Row struct {
 	SS              Number   `json:"ss"`
 	SSReason        string   `json:"ss_reason,omitempty"`
 	MS              Number   `json:"ms,omitzero"`
+	MSReason        string   `json:"ms_reason,omitempty"`
 	EMS             string   `json:"ems"`
 	F               Number   `json:"f,omitzero"`
 	FReason         string   `json:"f_reason,omitempty"`

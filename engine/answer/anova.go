@@ -153,24 +153,26 @@ func (a *analyst) analyse(ctx context.Context, kernel *fit.Kernel, grid *data.Gr
 func squared(sums *fit.Sums, x float64) (api.Number, string) {
 	n := api.Num(sums.InReadings(x))
 	if _, ok := n.Value(); !ok {
-		return n, "The squares of these readings are larger than a double can hold. Give the readings in a larger unit."
+		return n, tooLargeToSquare
 	}
 	return n, ""
 }
+
+const tooLargeToSquare = "The squares of these readings are larger than a double can hold. Give the readings in a larger unit."
 
 func (a *analyst) row(sums *fit.Sums, r *fit.Row) api.Row {
 	out := api.Row{Term: a.term(r.Set), Effect: a.effect(r.Set), DF: r.DF, Negligible: r.Line < 0, EMS: a.expected(r.Set), Pooled: []api.Pooled{}}
 	out.SS, out.SSReason = squared(sums, r.SS)
 	if r.DF > 0 {
-		out.MS, _ = squared(sums, r.MS)
+		out.MS, out.MSReason = squared(sums, r.MS)
 	}
-	if r.Line < 0 || r.Set == a.design.Residual() {
-		if r.Line >= 0 {
-			out.Pooled = a.pooled(a.plan.Model.Lines[r.Line].Pooled)
-		}
+	if r.Line < 0 {
 		return out
 	}
 	out.Pooled = a.pooled(a.plan.Model.Lines[r.Line].Pooled)
+	if r.Set == a.design.Residual() {
+		return out
+	}
 	out.Status = status(r.Test)
 	if !r.Test.Testable() {
 		return out

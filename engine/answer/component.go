@@ -15,13 +15,15 @@ func (a *analyst) component(sums *fit.Sums, c fit.Component) api.ComponentEstima
 	e := c.Estimator
 	out := api.ComponentEstimate{
 		Terms: a.names(e.Sets), Text: a.total(e), Confidence: a.plan.Confidence,
-		Estimate: api.Num(sums.InReadings(c.Estimate)), Negative: c.Estimate < 0,
+		Negative: c.Estimate < 0,
 	}
 	if e.Weights == nil {
-		out.EstimateReason = a.withoutLine(e)
+		out.Estimate, out.EstimateReason = api.Null, a.withoutLine(e)
 		return out
 	}
-	out.Lower, out.Upper = api.Num(sums.InReadings(c.Lower)), api.Num(sums.InReadings(c.Upper))
+	out.Estimate, out.EstimateReason = squared(sums, c.Estimate)
+	out.Lower, out.IntervalReason = squared(sums, c.Lower)
+	out.Upper, out.IntervalReason = squared(sums, c.Upper)
 	switch c.Method {
 	case fit.ChiSquareInterval:
 		out.Method = "exact (chi-square)"
