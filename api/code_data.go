@@ -87,7 +87,7 @@ func dataRules() []Entry {
 		{Code: RaggedRow, Rule: "Every row of a CSV text has as many cells as its header.", Example: reader(`"csv": "reader,density\nleft,0.31\nright\n"`)},
 		{Code: LostReading, Rule: "No reading is lost: none is null, an empty cell, or one of the texts in missing. A lost reading is never taken as a zero.", Example: reader(`"data": {"reader": ["left", "right"], "density": [0.31, null]}`)},
 		{Code: NonNumericReading, Rule: "A reading is a number, not a text, true, false, an array or an object.", Example: reader(`"data": {"reader": ["left", "right"], "density": [0.31, "NaN"]}`)},
-		{Code: ReadingOutOfRange, Rule: "A reading lies within the range of a double: below 1.8e308 in size and, unless it is 0, not below 5e-324.", Example: reader(`"data": {"reader": ["left", "right"], "density": [0.31, 1e400]}`)},
+		{Code: ReadingOutOfRange, Rule: "A reading lies within the range of a double: at most 1.797e308 in size and, unless it is 0, no nearer to it than 5e-324.", Example: reader(`"data": {"reader": ["left", "right"], "density": [0.31, 1e400]}`)},
 		{Code: MissingLabel, Rule: "Every row has a label for every factor; null and the empty text are none.", Example: reader(`"data": {"reader": ["left", null], "density": [0.31, 0.29]}`)},
 		{Code: UnusableLabel, Rule: "A label is a text, or a number within the range of a double.", Example: reader(`"data": {"reader": ["left", true], "density": [0.31, 0.29]}`)},
 		{Code: UnknownLabel, Rule: "Where the design lists a factor's labels, the data use no others.", Example: reader(`"data": {"reader": ["left", "Right"], "density": [0.31, 0.29]}`)},

@@ -85,7 +85,7 @@ func (s *csvScan) header() int {
 	for {
 		raw, end, what := csvCell(s.text, pos)
 		if what != "" || !utf8.Valid(raw) {
-			s.malformed("header", what)
+			s.malformed("The header", what)
 			return -1
 		}
 		name := string(raw)
@@ -105,7 +105,7 @@ func (s *csvScan) malformed(where, what string) {
 	if what == "" {
 		what = "is not valid UTF-8. Save the table in UTF-8"
 	}
-	s.add(api.InvalidCSV, s.place, "The %s of the table %s. Nothing after it was read.", where, what)
+	s.add(api.InvalidCSV, s.place, "%s of the table %s. Nothing after it was read.", where, what)
 }
 
 // prepare makes room for the rows.
@@ -303,7 +303,7 @@ func (s *csvScan) labelCell(c *csvColumn, pos, row int) (entry uint32, end int) 
 		s.noLabel(c.name, row, "is empty")
 		return 1 << entryBits, end
 	case !utf8.Valid(raw):
-		s.malformed(fmt.Sprintf("row %d", row+1), "")
+		s.malformed(fmt.Sprintf("Row %d", row+1), "")
 		return 0, -1
 	}
 	return c.dict.entry(raw), end
@@ -336,7 +336,7 @@ func (s *csvScan) readingCell(c *readings, pos, row int) (offset float64, end in
 func (s *csvScan) anyCell(pos, row int) (raw []byte, end int) {
 	raw, end, what := csvCell(s.text, pos)
 	if what != "" {
-		s.malformed(fmt.Sprintf("row %d", row+1), what)
+		s.malformed(fmt.Sprintf("Row %d", row+1), what)
 		return nil, -1
 	}
 	return raw, end

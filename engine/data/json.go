@@ -2,10 +2,8 @@ package data
 
 import (
 	"bytes"
-	"fmt"
 	"math"
 	"math/bits"
-	"strconv"
 
 	"guardrow/api"
 	"guardrow/engine"
@@ -61,9 +59,10 @@ func (s *jsonScan) object(pos int) int {
 		if pos = s.key(pos); pos < 0 {
 			return -1
 		}
-		if pos = s.space(s.anyColumn(s.name(start), pos)); s.err != nil {
+		if pos = s.anyColumn(s.name(start), pos); pos < 0 {
 			return -1
 		}
+		pos = s.space(pos)
 		switch s.at(pos) {
 		case ',':
 			pos = s.space(pos + 1)
@@ -199,14 +198,13 @@ func labelLoop[T width](s *jsonScan, name string, d *dictionary, codes []T, pos,
 		}
 		row++
 		if next+2 < len(text) && text[next] == ',' {
-			next++
-			if text[next] == ' ' {
-				next++
+			if pos = next + 1; text[pos] == ' ' {
+				pos++
 			}
-			if text[next] > ' ' {
-				pos = next
-				continue
+			if text[pos] <= ' ' {
+				pos = s.space(pos)
 			}
+			continue
 		}
 		var last bool
 		if pos, last = s.separator(next); pos < 0 {
@@ -401,14 +399,13 @@ func (s *jsonScan) readingLoop(c *readings, pos int) (end, row int, why outcome)
 		}
 		row++
 		if next+2 < len(text) && text[next] == ',' {
-			next++
-			if text[next] == ' ' {
-				next++
+			if pos = next + 1; text[pos] == ' ' {
+				pos++
 			}
-			if text[next] > ' ' {
-				pos = next
-				continue
+			if text[pos] <= ' ' {
+				pos = s.space(pos)
 			}
+			continue
 		}
 		var last bool
 		if pos, last = s.separator(next); pos < 0 {
@@ -539,15 +536,10 @@ func (s *jsonScan) unequal() {
 	}
 	parts := make([]string, 0, len(groups))
 	for _, g := range groups[:min(len(groups), maxExamples)] {
-		parts = append(parts, list(g.names)+" "+count(g.rows, "value", "values"))
+		parts = append(parts, count(g.rows, "value", "values")+" in "+list(g.names))
 	}
 	if more := len(groups) - maxExamples; more > 0 {
-		parts = append(parts, fmt.Sprintf("others %s", count(more, "further length", "further lengths")))
+		parts = append(parts, "others of "+count(more, "further length", "further lengths"))
 	}
-	s.add(api.UnequalColumns, s.place, "The columns are of different length: %s. Send one value per row in each, with null where a reading was lost.", joinHas(parts))
+	s.add(api.UnequalColumns, s.place, "The columns are of different length: %s. Send one value per row in each, with null where a reading was lost.", join(parts))
 }
-
-// joinHas turns "a" 3 values into a has 3 values.
-func joinHas(parts []string) string { return join(parts) }
-
-var _ = strconv.Itoa

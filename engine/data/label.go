@@ -13,7 +13,7 @@ import (
 // multiplication and, nearly always, one comparison; longer ones are found by a map. What a slot holds is an entry: the
 // label's number plus one, and below it two bits on how it is written. 0 stands for none.
 type dictionary struct {
-	slots []uint32 // open addressing, a power of two of them, at most half of them taken
+	slots []uint32 // open addressing, a power of two of them, at most half of them taken (see crowded)
 	mask  uint64
 	words [][2]uint64 // by number
 	// longs are the labels of 16 bytes and more, whose words are their position in longs and longMark.
@@ -85,7 +85,7 @@ func (d *dictionary) entry(label []byte) uint32 {
 	entry := d.next(label)
 	d.words = append(d.words, [2]uint64{lo, hi})
 	d.place(entry, lo, hi)
-	if 2*len(d.words) > len(d.slots) {
+	if d.crowded() {
 		d.grow()
 	}
 	return entry
@@ -110,6 +110,16 @@ func (d *dictionary) place(entry uint32, lo, hi uint64) {
 		i = (i + 1) & d.mask
 	}
 	d.slots[i] = entry
+}
+
+// crowded reports whether there are too few slots: where they are few enough to stay close to the processor, so many are
+// kept free that nearly every label is found at once.
+func (d *dictionary) crowded() bool {
+	const near = 1 << 13
+	if len(d.slots) < near {
+		return 16*len(d.words) > len(d.slots)
+	}
+	return 2*len(d.words) > len(d.slots)
 }
 
 func (d *dictionary) grow() {

@@ -159,7 +159,7 @@ func (s *scan) take(c *readings, x decimal, row int, text []byte) float64 {
 	switch v {
 	case outOfRange:
 		if row >= c.told && s.wants(api.ReadingOutOfRange, c.name) {
-			s.tell(api.ReadingOutOfRange, s.row(c.name, row), "The reading %s in row %d of %s is beyond the range of a double: above 1.8e308 in size, or nearer to 0 than 5e-324. Check it, or use another unit.", engine.Quote(readable(text)), row+1, engine.Quote(c.name))
+			s.tell(api.ReadingOutOfRange, s.row(c.name, row), "The reading %s in row %d of %s is beyond the range of a double: above 1.797e308 in size, or nearer to 0 than 5e-324. Check it, or use another unit.", engine.Quote(readable(text)), row+1, engine.Quote(c.name))
 		}
 	case unshiftable:
 		c.again = true

@@ -1,0 +1,309 @@
+package data
+
+import (
+	"fmt"
+	"maps"
+	"math/rand/v2"
+	"slices"
+	"strings"
+	"testing"
+
+	"pgregory.net/rapid"
+
+	"guardrow/api"
+	"guardrow/engine"
+)
+
+// table is a data set as a person has it: labels by row and factor.
+type table struct {
+	design *engine.Design
+	labels [][]string // by row, then factor
+}
+
+func (tb *table) columns() *Columns {
+	c := &Columns{Rows: len(tb.labels), place: "data", pointers: true}
+	for f, factor := range tb.design.Factors() {
+		d := newDictionary()
+		codes := make([]uint32, len(tb.labels))
+		for row := range tb.labels {
+			codes[row] = entryNumber(d.entry([]byte(tb.labels[row][f])))
+		}
+		narrow := makeCodes(len(codes), int64(len(d.words)))
+		for row, code := range codes {
+			switch {
+			case narrow.U8 != nil:
+				narrow.U8[row] = uint8(code)
+			case narrow.U16 != nil:
+				narrow.U16[row] = uint16(code)
+			default:
+				narrow.U32[row] = code
+			}
+		}
+		c.Factors = append(c.Factors, LabelColumn{Name: factor.Name, Codes: narrow, Labels: d.labels()})
+	}
+	offsets := make([]float64, len(tb.labels))
+	for row := range offsets {
+		offsets[row] = float64(row)
+	}
+	c.Responses = []Response{{Name: "y", Offsets: offsets}}
+	return c
+}
+
+// path returns the labels of a row at the factors in s: what tells one level of a nested factor from another.
+func (tb *table) path(row int, s engine.Set) string {
+	var path strings.Builder
+	for _, f := range s.Members() {
+		fmt.Fprintf(&path, "%d:%q ", f, tb.labels[row][f])
+	}
+	return path.String()
+}
+
+// expected are the codes that a plain reading of the rules finds, with maps of label paths only.
+func (tb *table) expected() map[api.Code]bool {
+	codes := make(map[api.Code]bool)
+	factors := tb.design.Factors()
+	astray := make([]bool, len(tb.labels))
+	strays := false
+	for f, factor := range factors {
+		for row := range tb.labels {
+			if factor.Labels != nil && !slices.Contains(factor.Labels, tb.labels[row][f]) {
+				codes[api.UnknownLabel] = true
+				astray[row], strays = true, true
+			}
+		}
+	}
+	unclear, done := engine.Set(0), engine.Set(0)
+	for range factors { // enough rounds for every order of declaration
+		for f, factor := range factors {
+			if done.Has(f) || factor.Above&^done != 0 {
+				continue
+			}
+			done |= engine.SetOf(f)
+			if factor.Labels != nil {
+				continue
+			}
+			if factor.Above&unclear != 0 {
+				unclear |= engine.SetOf(f)
+				continue
+			}
+			within := make(map[string]map[string]bool)
+			for row := range tb.labels {
+				known := true
+				for _, p := range factor.Above.Members() {
+					known = known && (factors[p].Labels == nil || slices.Contains(factors[p].Labels, tb.labels[row][p]))
+				}
+				if !known {
+					continue
+				}
+				parent := tb.path(row, factor.Above)
+				if within[parent] == nil {
+					within[parent] = make(map[string]bool)
+				}
+				within[parent][tb.labels[row][f]] = true
+			}
+			for _, levels := range within {
+				if int64(len(levels)) > factor.Levels {
+					codes[api.TooManyLevels] = true
+					unclear |= engine.SetOf(f)
+				}
+				if int64(len(levels)) < factor.Levels {
+					unclear |= engine.SetOf(f)
+					if factor.Above == 0 || !strays {
+						codes[api.TooFewLevels] = true
+					}
+				}
+			}
+		}
+	}
+	if unclear != 0 {
+		if n := int64(len(tb.labels)); n < tb.design.Observations() {
+			codes[api.MissingReadings] = true
+		} else if n > tb.design.Observations() {
+			codes[api.SurplusReadings] = true
+		}
+		return codes
+	}
+	cells := make(map[string]int64)
+	for row := range tb.labels {
+		if !astray[row] {
+			cells[tb.path(row, tb.design.All())]++
+		}
+	}
+	full := int64(0)
+	for _, n := range cells {
+		if n > tb.design.Replicates() {
+			codes[api.SurplusReadings] = true
+		}
+		full += min(n, tb.design.Replicates())
+	}
+	if full < tb.design.Observations() {
+		codes[api.MissingReadings] = true
+	}
+	return codes
+}
+
+// drawDesign draws a small design.
+func drawDesign(t *rapid.T) *engine.Design {
+	n := rapid.IntRange(1, 4).Draw(t, "factors")
+	declared := &api.Design{Replicates: new(api.Integer(rapid.IntRange(1, 3).Draw(t, "replicates")))}
+	for f := range n {
+		levels := rapid.IntRange(1, 3).Draw(t, "levels")
+		factor := api.Factor{Name: fmt.Sprintf("f%d", f), Effect: api.Random, Levels: api.Levels{Count: int64(levels)}}
+		if rapid.IntRange(0, 3).Draw(t, "listed") == 0 {
+			for l := range levels {
+				factor.Levels.Labels = append(factor.Levels.Labels, fmt.Sprintf("L%d", l))
+			}
+		}
+		for p := range f {
+			if rapid.IntRange(0, 2).Draw(t, "within") == 0 {
+				factor.Within = append(factor.Within, fmt.Sprintf("f%d", p))
+			}
+		}
+		declared.Factors = append(declared.Factors, factor)
+	}
+	if rapid.Bool().Draw(t, "inner first") {
+		slices.Reverse(declared.Factors)
+	}
+	design, faults := engine.Check(declared)
+	if faults != nil {
+		t.Fatal(faults)
+	}
+	return design
+}
+
+// drawTable draws a complete table of a design, rows in any order, a nested factor's labels reused or not.
+func drawTable(t *rapid.T, design *engine.Design) *table {
+	factors := design.Factors()
+	styles := make([]int, len(factors))
+	for f := range styles {
+		styles[f] = rapid.IntRange(0, 2).Draw(t, "labels: reused, unique, mixed")
+	}
+	tb := &table{design: design}
+	for cell := range design.Cells() {
+		levels := make([]int64, len(factors))
+		for f, rest := len(factors)-1, cell; f >= 0; f-- {
+			levels[f], rest = rest%factors[f].Levels, rest/factors[f].Levels
+		}
+		labels := make([]string, len(factors))
+		for f, factor := range factors {
+			parent := int64(0)
+			for _, p := range factor.Above.Members() {
+				parent = parent*factors[p].Levels + levels[p]
+			}
+			switch {
+			case factor.Labels != nil:
+				labels[f] = factor.Labels[levels[f]]
+			case styles[f] == 0 || styles[f] == 2 && parent%2 == 0:
+				labels[f] = fmt.Sprintf("l%d", levels[f])
+			default:
+				labels[f] = fmt.Sprintf("l%d-%d", levels[f], parent)
+			}
+		}
+		for range design.Replicates() {
+			tb.labels = append(tb.labels, labels)
+		}
+	}
+	rng := rand.New(rand.NewPCG(rapid.Uint64().Draw(t, "shuffle"), 0))
+	rng.Shuffle(len(tb.labels), func(i, j int) { tb.labels[i], tb.labels[j] = tb.labels[j], tb.labels[i] })
+	return tb
+}
+
+// corrupt changes a few rows, or none.
+func corrupt(t *rapid.T, tb *table) {
+	for range rapid.IntRange(0, 3).Draw(t, "changes") {
+		if len(tb.labels) < 2 {
+			return
+		}
+		row := rapid.IntRange(0, len(tb.labels)-1).Draw(t, "row")
+		other := rapid.IntRange(0, len(tb.labels)-1).Draw(t, "other row")
+		f := rapid.IntRange(0, len(tb.design.Factors())-1).Draw(t, "factor")
+		switch rapid.IntRange(0, 4).Draw(t, "change") {
+		case 0:
+			tb.labels = slices.Delete(tb.labels, row, row+1)
+		case 1:
+			tb.labels = append(tb.labels, tb.labels[row])
+		case 2:
+			tb.labels[row] = slices.Clone(tb.labels[row])
+			tb.labels[row][f] = tb.labels[other][f]
+		case 3:
+			tb.labels[row] = slices.Clone(tb.labels[row])
+			tb.labels[row][f] = rapid.SampledFrom([]string{"new", "l0", "L0", "L0 "}).Draw(t, "label")
+		case 4:
+			tb.labels[row] = tb.labels[other]
+		}
+	}
+}
+
+// layProperty: a table is laid if and only if the plain reading finds nothing, and the faults are of the kinds it finds.
+func layProperty(t *rapid.T) {
+	tb := drawTable(t, drawDesign(t))
+	corrupt(t, tb)
+	if len(tb.labels) == 0 {
+		return
+	}
+	want := tb.expected()
+	grid, faults := Lay(tb.design, tb.columns())
+	got := make(map[api.Code]bool)
+	for _, fault := range faults {
+		got[fault.Code] = true
+		if fault.Detail == "" || !strings.HasPrefix(fault.Place, "data") {
+			t.Fatalf("fault without a sentence or a place: %+v", fault)
+		}
+	}
+	if !maps.Equal(got, want) {
+		t.Fatalf("%d rows %q: got %v, want %v", len(tb.labels), tb.labels, faults, want)
+	}
+	if len(want) == 0 {
+		checkGrid(t, tb, grid)
+	}
+}
+
+// checkGrid checks that levels are numbered as promised, within each parent, and that a cell is a path of labels.
+func checkGrid(t *rapid.T, tb *table, grid *Grid) {
+	factors := tb.design.Factors()
+	for f, factor := range factors {
+		next := make(map[string]uint32) // by parent
+		level := make(map[string]uint32)
+		for row := range tb.labels {
+			label := tb.labels[row][f]
+			got := grid.Axes[f].At(row)
+			if factor.Labels != nil {
+				if factor.Labels[got] != label {
+					t.Fatalf("row %d: level %d of %s is not %q", row, got, factor.Name, label)
+				}
+				continue
+			}
+			parent := tb.path(row, factor.Above)
+			path := parent + "/" + label
+			if _, seen := level[path]; !seen {
+				level[path] = next[parent]
+				next[parent]++
+			}
+			if got != level[path] || int64(got) >= factor.Levels {
+				t.Fatalf("row %d: level %d of %s, want %d", row, got, factor.Name, level[path])
+			}
+		}
+	}
+	cells := make([]uint32, grid.Rows)
+	grid.Cells(cells, 0)
+	counts := make([]int64, tb.design.Cells())
+	for row, cell := range cells {
+		counts[cell]++
+		want := uint32(0)
+		for f := range factors {
+			want = want*uint32(factors[f].Levels) + grid.Axes[f].At(row)
+		}
+		if cell != want || grid.Responses[0].Offsets[row] != float64(row) {
+			t.Fatalf("row %d: cell %d, want %d", row, cell, want)
+		}
+	}
+	for cell, n := range counts {
+		if n != tb.design.Replicates() {
+			t.Fatalf("cell %d has %d readings", cell, n)
+		}
+	}
+}
+
+func TestLay(t *testing.T) { rapid.Check(t, layProperty) }
+
+func FuzzLay(f *testing.F) { f.Fuzz(rapid.MakeFuzz(layProperty)) }
