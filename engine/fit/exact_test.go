@@ -16,6 +16,9 @@ import (
 // to that hundredth.
 const limit = 1e-13
 
+// usual is above what these tests saw at worst (1.3e-15): beyond it digits are lost that need not be, though goal 17 holds.
+const usual = 2e-15
+
 // worst returns the largest error of s, measured as goal 17 says.
 func worst(s *Sums, terms []engine.Set, exact []*big.Rat) float64 {
 	total := new(big.Rat)
@@ -52,6 +55,9 @@ var hardReadings = []struct {
 }{
 	{"plain", func(rng *rand.Rand, g *data.Grid) []float64 {
 		return each(g, func(int) float64 { return rng.NormFloat64() })
+	}},
+	{"far from zero", func(rng *rand.Rand, g *data.Grid) []float64 {
+		return each(g, func(int) float64 { return 3 + rng.NormFloat64() })
 	}},
 	{"large offset", func(rng *rand.Rand, g *data.Grid) []float64 {
 		return each(g, func(int) float64 { return 1e9 + rng.NormFloat64() })
@@ -122,8 +128,8 @@ func TestAgainstRationals(t *testing.T) {
 					s := sumsOf(t, g, g.Responses[0].Offsets)
 					e := worst(s, d.Terms(), exact)
 					largest = max(largest, e)
-					if !(e <= limit) {
-						t.Errorf("round %d: error %.2g", round, e)
+					if !(e <= usual) {
+						t.Errorf("round %d: error %.2g, goal %.2g", round, e, limit)
 					}
 					shuffle(g, rng)
 				}
@@ -138,27 +144,35 @@ func TestLargeDesigns(t *testing.T) {
 	for _, c := range []struct {
 		levels     []int
 		replicates int
+		effect     float64 // of cells; the noise is 1
 	}{
-		{[]int{3}, 5000},
-		{[]int{2, 2}, 3000},
-		{[]int{20000}, 1},
-		{[]int{7000}, 3},
-		{[]int{300, 60}, 1},
-		{[]int{70, 300}, 1},
-		{[]int{2, 9000}, 2},
-		{[]int{9000, 2}, 2},
-		{[]int{41, 2, 83, 2}, 1},
-		{[]int{7, 3, 5, 4, 6}, 2},
-		{slices.Repeat([]int{2}, 12), 1},
-		{slices.Repeat([]int{2}, 12), 2},
-		{slices.Repeat([]int{3}, 8), 1},
+		{[]int{3}, 5000, 2},
+		{[]int{2, 2}, 3000, 2},
+		{[]int{20000}, 1, 2},
+		{[]int{7000}, 3, 2},
+		{[]int{7000}, 10, 2},
+		{[]int{7000}, 11, 2},
+		{[]int{30, 40}, 60, 2},
+		{[]int{4}, 20000, 2},
+		{[]int{30, 40}, 60, 500},
+		{[]int{4}, 20000, 500},
+		{[]int{30, 1000}, 3, 500},
+		{[]int{300, 60}, 1, 2},
+		{[]int{70, 300}, 1, 2},
+		{[]int{2, 9000}, 2, 2},
+		{[]int{9000, 2}, 2, 2},
+		{[]int{41, 2, 83, 2}, 1, 2},
+		{[]int{7, 3, 5, 4, 6}, 2, 2},
+		{slices.Repeat([]int{2}, 12), 1, 2},
+		{slices.Repeat([]int{2}, 12), 2, 2},
+		{slices.Repeat([]int{3}, 8), 1, 2},
 	} {
-		t.Run(fmt.Sprint(c.levels, c.replicates), func(t *testing.T) {
+		t.Run(fmt.Sprint(c.levels, c.replicates, c.effect), func(t *testing.T) {
 			rng := rand.New(rand.NewPCG(9, 2))
 			g := emptyGrid(crossed(c.levels, c.replicates))
 			cells := make([]float64, g.Rows/c.replicates)
 			for i := range cells {
-				cells[i] = 2 * rng.NormFloat64()
+				cells[i] = c.effect * rng.NormFloat64()
 			}
 			// Whole numbers of 2^-20, so that exact sums fit big.Int arithmetic that is fast.
 			y := each(g, func(i int) float64 {
@@ -171,8 +185,12 @@ func TestLargeDesigns(t *testing.T) {
 				s := sumsOf(t, g, g.Responses[0].Offsets)
 				e := worst(s, g.Design.Terms(), exact)
 				t.Logf("%s: largest error %.2g", order, e)
-				if !(e <= limit) {
-					t.Errorf("%s: error %.2g", order, e)
+				if !(e <= usual) {
+					t.Errorf("%s: error %.2g, goal %.2g", order, e, limit)
+				}
+				// However much the cells explain, what is within them keeps its digits.
+				if e := relativeError(s.Within, exact[len(exact)-1], new(big.Rat)); !(e <= usual) {
+					t.Errorf("%s: within cells %v, error %.2g", order, s.Within, e)
 				}
 				shuffle(g, rng)
 			}
