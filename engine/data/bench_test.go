@@ -112,9 +112,12 @@ func scanAndLay(b *testing.B, s study) func() {
 
 // The part of row 1 of the goals that is this package's: JSON text to a grid, against encoding/json.Valid of the text.
 func BenchmarkScanJSONAndLayOverValid(b *testing.B) {
-	for name, reading := range map[string]func(*rand.Rand) string{"3decimals": fixedReading, "17digits": fullReading, "offset": offsetReading} {
-		b.Run(name, func(b *testing.B) {
-			s := newStudy(reading)
+	for _, kind := range []struct {
+		name    string
+		reading func(*rand.Rand) string
+	}{{"3decimals", fixedReading}, {"17digits", fullReading}, {"offset", offsetReading}} {
+		b.Run(kind.name, func(b *testing.B) {
+			s := newStudy(kind.reading)
 			ratio(b, benchRows, scanAndLay(b, s), func() {
 				if !json.Valid(s.json) {
 					b.Fatal("not valid")
@@ -133,6 +136,40 @@ func BenchmarkScanJSONOverValid(b *testing.B) {
 	}, func() { json.Valid(s.json) })
 }
 
+// The part of row 2 of the goals that is this package's: against encoding/json into a struct of slices, a map for each
+// factor, and a count of the cells.
+func BenchmarkScanJSONAndLayOverOrdinary(b *testing.B) {
+	s := newStudy(fixedReading)
+	ratio(b, benchRows, scanAndLay(b, s), func() { ordinaryJSON(b, s.json) })
+}
+
+func ordinaryJSON(b *testing.B, text []byte) {
+	b.Helper()
+	var data struct {
+		Batch, Device, Tube []string
+		Potassium           []float64
+	}
+	if err := json.Unmarshal(text, &data); err != nil {
+		b.Fatal(err)
+	}
+	cells := make([]uint32, len(data.Potassium))
+	for _, column := range [][]string{data.Batch, data.Device, data.Tube} {
+		codes := make(map[string]uint32)
+		for row, label := range column {
+			code, known := codes[label]
+			if !known {
+				code = uint32(len(codes))
+				codes[label] = code
+			}
+			cells[row] = cells[row]*256 + code
+		}
+	}
+	counts := make(map[uint32]int)
+	for _, cell := range cells {
+		counts[cell]++
+	}
+}
+
 // What Split adds: finding the end of the bulk value, against encoding/json.Valid.
 func BenchmarkSplitOverValid(b *testing.B) {
 	s := newStudy(fixedReading)
@@ -146,9 +183,12 @@ func BenchmarkSplitOverValid(b *testing.B) {
 
 // Row 3 of the goals: CSV text to codes and numbers, against encoding/csv (ReuseRecord), a map for each factor and strconv.
 func BenchmarkScanCSVOverOrdinary(b *testing.B) {
-	for name, reading := range map[string]func(*rand.Rand) string{"3decimals": fixedReading, "17digits": fullReading} {
-		b.Run(name, func(b *testing.B) {
-			s := newStudy(reading)
+	for _, kind := range []struct {
+		name    string
+		reading func(*rand.Rand) string
+	}{{"3decimals", fixedReading}, {"17digits", fullReading}} {
+		b.Run(kind.name, func(b *testing.B) {
+			s := newStudy(kind.reading)
 			ratio(b, benchRows, func() {
 				if _, faults := ScanCSV(s.csv, s.plan); faults != nil {
 					b.Fatal(faults)

@@ -210,17 +210,21 @@ func (s *csvScan) cell(c *csvColumn, pos, row int) int {
 		_, end := s.anyCell(pos, row)
 		return end
 	case c.use == asFactor:
-		entry, end := uint32(0), 0
-		if pos+16 <= len(s.text) {
-			entry, end = c.dict.quickCell(s.text, pos)
+		code, end := uint32(0), 0
+		switch {
+		case pos+21 > len(s.text):
+		case s.text[pos] == '"':
+			code, end = c.dict.quickQuoted(s.text, pos)
+		default:
+			code, end = c.dict.quickCell(s.text, pos)
 		}
-		if entry == 0 {
-			if entry, end = s.labelCell(c, pos, row); end < 0 {
+		if code == 0 {
+			if code, end = s.labelCell(c, pos, row); end < 0 {
 				return -1
 			}
 		}
 		if row < s.room {
-			c.put(row, entryNumber(entry))
+			c.put(row, code-1)
 		}
 		return end
 	}
@@ -257,35 +261,47 @@ func (c *csvColumn) put(row int, code uint32) {
 	}
 }
 
-// quickCell returns the entry of the label at pos, and where its cell ends, if it is a short one that is known and stands
-// without quotation marks; otherwise 0. At least 16 bytes are left from pos.
-func (d *dictionary) quickCell(text []byte, pos int) (entry uint32, end int) {
+// quickCell returns one more than the number of the label at pos, and where its cell ends, if it is a short one that is
+// known and stands without quotation marks; otherwise 0. At least 16 bytes are left from pos.
+func (d *dictionary) quickCell(text []byte, pos int) (code uint32, end int) {
 	lo, hi := word64(text, pos), uint64(0)
 	n := stop(lo)
-	if n < 64 {
-		lo &= 1<<n - 1
-	} else {
+	switch {
+	case n == 0:
+		return 0, 0
+	case n < 64:
+		lo &= 1<<(n&63) - 1
+		if d.near.places != nil {
+			if place := &d.near.places[nearHash(lo|uint64(n)<<53)>>(d.near.shift&63)]; place.key == lo|uint64(n)<<53 {
+				return place.number + 1, pos + n>>3
+			}
+		}
+	default:
 		hi = word64(text, pos+8)
-		if n = stop(hi); n == 64 {
+		m := stop(hi)
+		if m == 64 {
 			return 0, 0
 		}
-		hi &= 1<<n - 1
-		n += 64
+		hi &= 1<<(m&63) - 1
+		n += m
 	}
-	if n == 0 {
+	entry := d.find(lo, hi|uint64(n)<<53)
+	if entry == 0 {
 		return 0, 0
 	}
-	hi |= uint64(n) << 53
-	end = pos + n>>3
-	for i := hashWords(lo, hi) & d.mask; ; i = (i + 1) & d.mask {
-		entry = d.slots[i]
-		if entry == 0 {
-			return 0, 0
-		}
-		if w := &d.words[entryNumber(entry)]; w[0] == lo && w[1] == hi {
-			return entry, end
-		}
+	if n < 64 {
+		d.near.put(lo|uint64(n)<<53, entryNumber(entry), len(d.words))
 	}
+	return entryNumber(entry) + 1, pos + n>>3
+}
+
+// quickQuoted is quickCell for a label in quotation marks, none inside. At least 21 bytes are left from pos.
+func (d *dictionary) quickQuoted(text []byte, pos int) (code uint32, end int) {
+	entry, end := d.quick(text, pos)
+	if entry == 0 || text[end] != ',' && lineEnd(text, end) == end {
+		return 0, 0
+	}
+	return entryNumber(entry) + 1, end
 }
 
 // stop returns how many bits of w come before the first comma, quotation mark or line break.
@@ -293,20 +309,20 @@ func stop(w uint64) int {
 	return bits.TrailingZeros64(zeroBytes(w^','*ones)|zeroBytes(w^'\n'*ones)|zeroBytes(w^'\r'*ones)|zeroBytes(w^'"'*ones)) &^ 7
 }
 
-// labelCell reads any label, or reports that there is none; its entry is then not to be relied on.
-func (s *csvScan) labelCell(c *csvColumn, pos, row int) (entry uint32, end int) {
+// labelCell reads any label, and returns one more than its number; or it reports that there is none.
+func (s *csvScan) labelCell(c *csvColumn, pos, row int) (code uint32, end int) {
 	raw, end := s.anyCell(pos, row)
 	switch {
 	case end < 0:
 		return 0, -1
 	case len(raw) == 0:
 		s.noLabel(c.name, row, "is empty")
-		return 1 << entryBits, end
+		return 1, end
 	case !utf8.Valid(raw):
 		s.malformed(fmt.Sprintf("Row %d", row+1), "")
 		return 0, -1
 	}
-	return c.dict.entry(raw), end
+	return entryNumber(c.dict.entry(raw)) + 1, end
 }
 
 // readingCell reads any reading, or reports what stands in its place.

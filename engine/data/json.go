@@ -176,6 +176,7 @@ func (s *jsonScan) labels(index, pos int) (rows, end int) {
 func labelLoop[T width](s *jsonScan, name string, d *dictionary, codes []T, pos, row int) ([]T, int, int, outcome) {
 	text := s.text
 	for {
+		pos, row = nearLabels(&d.near, text, codes, pos, row)
 		var entry uint32
 		next := pos
 		if pos+20 <= len(text) {
@@ -197,15 +198,6 @@ func labelLoop[T width](s *jsonScan, name string, d *dictionary, codes []T, pos,
 			codes[row] = T(code)
 		}
 		row++
-		if next+2 < len(text) && text[next] == ',' {
-			if pos = next + 1; text[pos] == ' ' {
-				pos++
-			}
-			if text[pos] <= ' ' {
-				pos = s.space(pos)
-			}
-			continue
-		}
 		var last bool
 		if pos, last = s.separator(next); pos < 0 {
 			return codes, pos, row, failed
@@ -214,6 +206,42 @@ func labelLoop[T width](s *jsonScan, name string, d *dictionary, codes []T, pos,
 			return codes, pos, row, ended
 		}
 	}
+}
+
+// nearLabels reads labels from pos as long as they are short texts that were seen lately and are followed by another
+// element. Their codes fit, since they were stored before.
+func nearLabels[T width](near *nearTable, text []byte, codes []T, pos, row int) (int, int) {
+	places, shift := near.places, near.shift&63
+	if places == nil {
+		return pos, row
+	}
+	for pos+12 <= len(text) && row < len(codes) && text[pos] == '"' {
+		key := word64(text, pos+1)
+		end := zeroBytes(key ^ '"'*ones)
+		if end == 0 {
+			break
+		}
+		n := bits.TrailingZeros64(end) &^ 7
+		key = key&(1<<(n&63)-1) | uint64(n)<<53
+		place := &places[nearHash(key)>>shift]
+		if place.key != key || n == 0 {
+			break
+		}
+		next := pos + 2 + n>>3
+		if text[next] != ',' {
+			break
+		}
+		if next++; text[next] == ' ' {
+			next++
+		}
+		if text[next] <= ' ' {
+			break
+		}
+		codes[row] = T(place.number)
+		row++
+		pos = next
+	}
+	return pos, row
 }
 
 // quick returns the entry of the label at pos, and where the label ends, if it is a short one that is known; otherwise 0.
@@ -237,18 +265,12 @@ func (d *dictionary) quick(text []byte, pos int) (entry uint32, end int) {
 		hi &= 1<<n - 1
 		n += 64
 	}
-	hi |= uint64(n) << 53
-	for i := hashWords(lo, hi) & d.mask; ; i = (i + 1) & d.mask {
-		entry = d.slots[i]
-		if entry == 0 {
-			return 0, 0
-		}
-		if w := &d.words[entryNumber(entry)]; w[0] == lo && w[1] == hi {
-			break
-		}
-	}
+	entry = d.find(lo, hi|uint64(n)<<53)
 	if entry&written == 0 {
 		return 0, 0
+	}
+	if n < 64 && written == asText {
+		d.near.put(lo|uint64(n)<<53, entryNumber(entry), len(d.words))
 	}
 	return entry, pos + n>>3 + int(written>>1) // past the closing quote
 }
@@ -377,9 +399,18 @@ func (s *jsonScan) floats(n int) []float64 {
 func (s *jsonScan) readingLoop(c *readings, pos int) (end, row int, why outcome) {
 	text := s.text
 	quick := len(s.lost.numbers) == 0
+	const enough = 16 // tries of the quickest way in vain, after which it is left
+	futile := 0
 	for {
 		offset, next := 0.0, -1
 		if quick {
+			if before := row; futile < enough {
+				if pos, row = nearReadings(&c.shift, text, c.offsets, pos, row); row > before {
+					futile = 0
+				} else {
+					futile++
+				}
+			}
 			offset, next = c.shift.quick(text, pos)
 		}
 		if next < 0 {
@@ -415,6 +446,47 @@ func (s *jsonScan) readingLoop(c *readings, pos int) (end, row int, why outcome)
 			return pos, row, ended
 		}
 	}
+}
+
+// nearReadings reads numbers from pos as long as they are plain decimals of at most 7 characters that a step turns into
+// offsets, and are followed by another element.
+func nearReadings(s *shifter, text []byte, offsets []float64, pos, row int) (int, int) {
+	for pos+12 <= len(text) && row < len(offsets) {
+		first, sign := pos, int64(0)
+		if text[pos] == '-' {
+			first, sign = pos+1, -1
+		}
+		x, marks := digitMarks(word64(text, first))
+		rest := marks & (marks - 1)
+		if rest == 0 {
+			break
+		}
+		n := bits.TrailingZeros64(marks) >> 3
+		last := bits.TrailingZeros64(rest) >> 3
+		decimals := last - n - 1
+		if n == 0 || decimals <= 0 || text[first+n] != '.' || text[first+last] != ',' || x&0xFF == 0 && n > 1 {
+			break
+		}
+		// Close the gap that the point leaves.
+		low := uint64(1)<<(8*n&63) - 1
+		m := digits8((x&low | x>>8&^low) << (8 * (9 - last) & 63))
+		step := &s.steps[decimals&7]
+		d := (int64(m)*step.times ^ sign) - sign - step.shift
+		if m >= step.limit || uint64(d+exactInteger) > 2*exactInteger {
+			break
+		}
+		next := first + last + 1
+		if text[next] == ' ' {
+			next++
+		}
+		if text[next] <= ' ' {
+			break
+		}
+		offsets[row] = float64(d) / step.power
+		row++
+		pos = next
+	}
+	return pos, row
 }
 
 // quick returns the offset of the number at pos, and where the number ends: -1 unless it is a plain decimal that is

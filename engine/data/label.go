@@ -13,8 +13,9 @@ import (
 // multiplication and, nearly always, one comparison; longer ones are found by a map. What a slot holds is an entry: the
 // label's number plus one, and below it two bits on how it is written. 0 stands for none.
 type dictionary struct {
-	slots []uint32 // open addressing, a power of two of them, at most half of them taken (see crowded)
+	slots []uint32 // open addressing, a power of two of them, at most half of them taken
 	mask  uint64
+	near  nearTable   // of labels that stand between quotes in JSON, or without any in CSV
 	words [][2]uint64 // by number
 	// longs are the labels of 16 bytes and more, whose words are their position in longs and longMark.
 	longs []string
@@ -39,7 +40,7 @@ var hashSeed = func() [2]uint64 {
 }()
 
 func newDictionary() *dictionary {
-	return &dictionary{slots: make([]uint32, 64), mask: 63, words: make([][2]uint64, 0, 32)}
+	return &dictionary{slots: make([]uint32, 64), mask: 63, words: make([][2]uint64, 0, 32), near: newNearTable(256)}
 }
 
 func hashWords(lo, hi uint64) uint64 {
@@ -117,7 +118,7 @@ func (d *dictionary) place(entry uint32, lo, hi uint64) {
 func (d *dictionary) crowded() bool {
 	const near = 1 << 13
 	if len(d.slots) < near {
-		return 16*len(d.words) > len(d.slots)
+		return 8*len(d.words) > len(d.slots)
 	}
 	return 2*len(d.words) > len(d.slots)
 }
@@ -132,6 +133,44 @@ func (d *dictionary) grow() {
 			d.place(entry, w[0], w[1])
 		}
 	}
+}
+
+// nearTable finds again labels of up to 7 bytes by one word, the label and its length: a place for each, which the label
+// seen last in it holds. Where labels are so many that they would chase each other from place to place, it is given up.
+type nearTable struct {
+	places []nearPlace // a power of two of them; nil once given up
+	shift  int
+}
+
+type nearPlace struct {
+	key    uint64 // 0 for a free place
+	number uint32
+}
+
+func newNearTable(n int) nearTable {
+	return nearTable{places: make([]nearPlace, n), shift: 64 - bits.Len(uint(n-1))} //nolint:gosec // a power of two
+}
+
+// nearHash mixes the bits of a key; its upper bits choose the place. Fibonacci hashing: Knuth, The Art of Computer
+// Programming, vol. 3, section 6.4.
+func nearHash(key uint64) uint64 { return key * 0x9E3779B97F4A7C15 }
+
+// put remembers the number of a key, there being so many labels.
+func (n *nearTable) put(key uint64, number uint32, labels int) {
+	const most = 1 << 14
+	if size := len(n.places); 8*labels > size {
+		old := n.places
+		if *n = (nearTable{}); 4*labels > most || size == 0 {
+			return
+		}
+		*n = newNearTable(min(4*size, most))
+		for _, place := range old {
+			if place.key != 0 {
+				n.places[nearHash(place.key)>>n.shift] = place
+			}
+		}
+	}
+	n.places[nearHash(key)>>n.shift] = nearPlace{key, number}
 }
 
 // labels returns all labels by number.

@@ -259,7 +259,7 @@ func layProperty(t *rapid.T) {
 }
 
 // checkGrid checks that levels are numbered as promised, within each parent, and that a cell is a path of labels.
-func checkGrid(t *rapid.T, tb *table, grid *Grid) {
+func checkGrid(t rapid.TB, tb *table, grid *Grid) {
 	factors := tb.design.Factors()
 	for f, factor := range factors {
 		next := make(map[string]uint32) // by parent
@@ -307,3 +307,62 @@ func checkGrid(t *rapid.T, tb *table, grid *Grid) {
 func TestLay(t *testing.T) { rapid.Check(t, layProperty) }
 
 func FuzzLay(f *testing.F) { f.Fuzz(rapid.MakeFuzz(layProperty)) }
+
+// Studies with more levels than one or two bytes can tell apart, and nested labels that are reused here and unique there.
+func TestLayManyLevels(t *testing.T) {
+	for _, c := range []struct{ outer, inner, replicates int }{{300, 40, 1}, {66_000, 1, 1}, {1, 66_000, 1}, {20, 300, 2}, {7, 5, 300}} {
+		design, faults := engine.Check(&api.Design{Factors: []api.Factor{
+			{Name: "inner", Levels: api.Levels{Count: int64(c.inner)}, Effect: api.Random, Within: []string{"outer"}},
+			{Name: "outer", Levels: api.Levels{Count: int64(c.outer)}, Effect: api.Random},
+		}, Replicates: new(api.Integer(c.replicates))})
+		if faults != nil {
+			t.Fatal(faults)
+		}
+		for style := range 3 {
+			tb := &table{design: design}
+			for i := range c.outer * c.inner * c.replicates {
+				outer, inner := i%c.outer, i/c.outer%c.inner
+				label := fmt.Sprintf("i%d", inner)
+				if style == 1 || style == 2 && outer%2 == 1 {
+					label = fmt.Sprintf("i%d of %d", inner, outer)
+				}
+				tb.labels = append(tb.labels, []string{label, fmt.Sprintf("o%d", outer)})
+			}
+			rng := rand.New(rand.NewPCG(3, uint64(style)))
+			rng.Shuffle(len(tb.labels), func(i, j int) { tb.labels[i], tb.labels[j] = tb.labels[j], tb.labels[i] })
+			grid, faults := Lay(design, throughText(t, tb, style))
+			if faults != nil {
+				t.Fatalf("%v, style %d: %+v", c, style, faults)
+			}
+			checkGrid(t, tb, grid)
+			other := slices.IndexFunc(tb.labels, func(labels []string) bool { return !slices.Equal(labels, tb.labels[0]) })
+			tb.labels[0] = tb.labels[other]
+			if _, faults = Lay(design, throughText(t, tb, style)); faults == nil {
+				t.Fatalf("%v, style %d: a row in the cell of another was taken", c, style)
+			}
+		}
+	}
+}
+
+// throughText writes a table as JSON columns or as CSV and scans it.
+func throughText(t *testing.T, tb *table, style int) *Columns {
+	t.Helper()
+	c := content{names: []string{"inner", "outer", "y"}, labels: make([][]string, 2), values: make([][]string, 1)}
+	for row, labels := range tb.labels {
+		c.labels[0] = append(c.labels[0], labels[0])
+		c.labels[1] = append(c.labels[1], labels[1])
+		c.values[0] = append(c.values[0], fmt.Sprint(row))
+	}
+	if style == 0 {
+		columns, faults := ScanCSV(c.csv(false, "\n"), c.plan())
+		if faults != nil {
+			t.Fatal(faults)
+		}
+		return columns
+	}
+	columns, faults, err := ScanJSON(c.json(""), c.plan())
+	if faults != nil || err != nil {
+		t.Fatal(faults, err)
+	}
+	return columns
+}

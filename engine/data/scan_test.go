@@ -455,15 +455,16 @@ func (c *content) csv(quote bool, end string) []byte {
 		}
 		return text
 	}
-	text := "\uFEFF" + strings.Join(c.names, ",") + end
+	var text strings.Builder
+	text.WriteString("\uFEFF" + strings.Join(c.names, ",") + end)
 	for row := range c.labels[0] {
 		cells := make([]string, 0, len(c.names))
 		for _, column := range append(slices.Clone(c.labels), c.values...) {
 			cells = append(cells, cell(column[row]))
 		}
-		text += strings.Join(cells, ",") + end
+		text.WriteString(strings.Join(cells, ",") + end)
 	}
-	return []byte(text)
+	return []byte(text.String())
 }
 
 // The same content reads the same as JSON however it is spaced, as CSV however it is quoted, and as CSV in a JSON string.
@@ -542,4 +543,31 @@ func TestRowsAndLabelsPermute(t *testing.T) {
 			t.Fatal("other labels, the same fingerprint")
 		}
 	})
+}
+
+// The room for rows is only estimated: brackets in labels make it too small, commas too large, and neither matters.
+func TestEstimatesDoNotMatter(t *testing.T) {
+	for _, label := range []string{"]", ",", "],[", "a,b,c,d,e,f,g,h"} {
+		c := content{names: []string{"f", "y"}, labels: make([][]string, 1), values: make([][]string, 1)}
+		for row := range 5000 {
+			c.labels[0] = append(c.labels[0], label+strconv.Itoa(row%700))
+			c.values[0] = append(c.values[0], strconv.Itoa(row))
+		}
+		one, faults, err := ScanJSON(c.json(""), c.plan())
+		if err != nil || faults != nil {
+			t.Fatal(err, faults)
+		}
+		two, faults := ScanCSV(c.csv(false, "\n"), c.plan())
+		if faults != nil {
+			t.Fatal(faults)
+		}
+		if one.Rows != 5000 || one.Factors[0].Codes.Len() != 5000 || Fingerprint(one) != Fingerprint(two) {
+			t.Errorf("%q: %d rows", label, one.Rows)
+		}
+		for row, r := range one.Responses[0].Offsets {
+			if r != float64(row) {
+				t.Fatalf("%q: row %d is %v", label, row, r)
+			}
+		}
+	}
 }

@@ -264,7 +264,7 @@ func divide128(hi, lo, by uint64) float64 {
 	if rest != 0 {
 		low |= 1
 	}
-	return math.Ldexp(float64(low), -up)
+	return float64(low) * math.Float64frombits(uint64(1023-up)<<52) //nolint:gosec // times 2^-up, exactly: −64 ≤ up < 128
 }
 
 // roundText returns the double nearest to an integer's digits times 10^-k.
