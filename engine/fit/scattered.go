@@ -1,7 +1,5 @@
 package fit
 
-import "math"
-
 const (
 	// rowBlock is the number of rows whose cells are found at once: their indexes stay in the nearest cache.
 	rowBlock = 1024
@@ -47,7 +45,7 @@ func (k *Kernel) scatteredMeans(y []float64, origin float64) float64 {
 	for pass := 1; pass <= 3; pass++ {
 		all := k.gather(y)
 		within = all - k.center(origin)
-		if pass >= passes && within > all/16 || math.IsNaN(within) {
+		if pass >= passes && within > all/16 {
 			break
 		}
 	}
