@@ -59,7 +59,7 @@ func dataRules() []Entry {
 	anova := func(factors, rest string) Example {
 		return Example{Path: "/v1/anova", Body: `{"design": {"factors": [` + factors + `]}, ` + rest + `}`}
 	}
-	// Two readers read a plate each, or lamps in two ovens: invented.
+	// Two readers of plates, and lamps in two ovens: invented.
 	reader := func(rest string) Example {
 		return anova(`{"name": "reader", "levels": ["left", "right"], "effect": "fixed"}`, rest)
 	}

@@ -92,6 +92,10 @@ func (s *csvScan) header() int {
 		if len(s.columns) == 0 {
 			s.header1 = name
 		}
+		if len(s.columns) == MaxColumns {
+			s.malformed("The header", fmt.Sprintf("has more than %d cells", MaxColumns))
+			return -1
+		}
 		s.columns = append(s.columns, csvColumn{role: s.next(name), name: name})
 		if end >= len(s.text) || s.text[end] != ',' {
 			return lineEnd(s.text, end)
@@ -108,9 +112,11 @@ func (s *csvScan) malformed(where, what string) {
 	s.add(api.InvalidCSV, s.place, "%s of the table %s. Nothing after it was read.", where, what)
 }
 
-// prepare makes room for the rows.
+// prepare makes room for the rows: as many as there are lines, but not more than there are bytes for, since every row has
+// a byte between cells and one at its end.
 func (s *csvScan) prepare(body int) {
-	s.room = min(bytes.Count(s.text[body:], []byte{'\n'})+1, s.plan.rowLimit())
+	rest := s.text[body:]
+	s.room = min(bytes.Count(rest, []byte{'\n'})+1, (len(rest)+1)/len(s.columns), s.plan.rowLimit())
 	for i := range s.columns {
 		c := &s.columns[i]
 		switch c.use {

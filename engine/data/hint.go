@@ -7,20 +7,30 @@ import (
 	"guardrow/engine"
 )
 
-// hintLimit is how many known names are searched for one that is near, so that a hint costs little.
-const hintLimit = 2000
+// Hints are searched among so many names, so that they cost little whatever is sent.
+const (
+	formLimit = 20_000 // for one that differs in case and blanks only
+	nearLimit = 500    // for one that is near in its letters
+)
 
 // nearest returns a sentence with the known name that is nearest to name, or nothing where none is near.
 func nearest(name string, known []string) string {
-	for _, k := range known {
-		if k != name && sameButForm(k, name) {
-			return " Did you mean " + engine.Quote(k) + "? Case and blanks count."
-		}
-	}
 	if len(name) > engine.MaxName {
 		return ""
 	}
-	return engine.DidYouMean(name, known[:min(len(known), hintLimit)])
+	var candidates []string
+	for _, k := range known[:min(len(known), formLimit)] {
+		if len(k) > 2*len(name)+4 {
+			continue
+		}
+		if k != name && sameButForm(k, name) {
+			return " Did you mean " + engine.Quote(k) + "? Case and blanks count."
+		}
+		if len(candidates) < nearLimit {
+			candidates = append(candidates, k)
+		}
+	}
+	return engine.DidYouMean(name, candidates)
 }
 
 // sameButForm reports whether two labels differ in nothing but case and blanks.

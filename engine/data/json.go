@@ -2,6 +2,7 @@ package data
 
 import (
 	"bytes"
+	"fmt"
 	"math"
 	"math/bits"
 
@@ -54,10 +55,13 @@ func (s *jsonScan) object(pos int) int {
 	if pos = s.space(pos + 1); s.at(pos) == '}' {
 		return pos + 1
 	}
-	for {
+	for columns := 0; ; columns++ {
 		start := pos
 		if pos = s.key(pos); pos < 0 {
 			return -1
+		}
+		if columns == MaxColumns {
+			return s.fail(start, fmt.Sprintf("The data have more than %d columns.", MaxColumns))
 		}
 		if pos = s.anyColumn(s.name(start), pos); pos < 0 {
 			return -1
@@ -115,14 +119,18 @@ func (s *jsonScan) anyColumn(name string, pos int) int {
 	return end
 }
 
-// expect returns how many rows to make room for: those of the first column, or an estimate from its commas.
+// expect returns how many rows to make room for: those of the first column, as far as there are bytes for them, or an
+// estimate from its commas. Brackets and commas in labels mislead it, which costs no more than time or room.
 func (s *jsonScan) expect(pos int) int {
-	if s.rows >= 0 {
-		return s.rows
-	}
 	inside := s.text[pos:]
+	if s.rows >= 0 {
+		inside = inside[:min(len(inside), 2*s.rows)]
+	}
 	if end := bytes.IndexByte(inside, ']'); end >= 0 {
 		inside = inside[:end]
+	}
+	if s.rows >= 0 {
+		return min(s.rows, len(inside)/2+1)
 	}
 	return min(bytes.Count(inside, comma)+1, s.plan.rowLimit())
 }

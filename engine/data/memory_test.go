@@ -136,3 +136,58 @@ func checkHuge(t *testing.T, tb *table, codes ...api.Code) {
 		t.Errorf("no count in %q", last.Detail)
 	}
 }
+
+// Whatever is sent, what is allocated is in proportion to it.
+func TestHostileShapes(t *testing.T) {
+	const size = 400_000
+	fill := func(part string) string { return strings.Repeat(part, size/len(part)) }
+	var keys strings.Builder
+	for i := range size / 12 {
+		fmt.Fprintf(&keys, `"k%d":[1],`, i)
+	}
+	json := map[string]string{
+		"long column, then many short ones": `{"density":[` + fill("1,") + `1],` + keys.String() + `"reader":[]}`,
+		"a label of commas":                 `{"reader":["` + fill(",") + `"],"density":[1]}`,
+		"many labels":                       `{"reader":[` + fill("1,2,3,") + `4],"density":[]}`,
+		"nulls":                             `{"reader":[` + fill("null,") + `null],"density":[` + fill("null,") + `null]}`,
+		"texts":                             `{"reader":[` + fill("{},") + `{}],"density":[` + fill(`"x",`) + `"x"]}`,
+		"digits":                            `{"reader":[1],"density":[` + fill("1234567890") + `]}`,
+		"decimals":                          `{"reader":[1],"density":[0.` + fill("1234567890") + `]}`,
+		"exponent":                          `{"reader":[1],"density":[1e` + fill("1234567890") + `]}`,
+		"long numbers":                      `{"reader":[1],"density":[` + fill("1234567890123456789012345,") + `1]}`,
+		"far apart":                         `{"reader":[1],"density":[` + fill("1e-300,1e300,") + `1]}`,
+	}
+	for name, text := range json {
+		for _, plan := range []Plan{twoColumns(), {Factors: []string{"reader"}}} {
+			checkHostile(t, name, len(text), func() {
+				if _, _, err := ScanJSON([]byte(text), plan); err != nil {
+					t.Errorf("%s: %v", name, err)
+				}
+			})
+		}
+	}
+	csv := map[string]string{
+		"many columns, many empty lines": strings.Repeat("c,", 50_000) + "reader,density\n" + fill("\n"),
+		"many columns, short lines":      strings.Repeat("c,", 50_000) + "reader,density\n" + fill("1\n"),
+		"quotes":                         "reader,density\n\"" + fill(`""`) + "\",1\n",
+		"commas":                         "reader,density\n" + fill(",") + "\n",
+	}
+	for name, text := range csv {
+		for _, plan := range []Plan{twoColumns(), {Factors: []string{"reader"}}} {
+			checkHostile(t, name, len(text), func() { ScanCSV([]byte(text), plan) })
+		}
+	}
+}
+
+func checkHostile(t *testing.T, name string, size int, scan func()) {
+	t.Helper()
+	var before, after runtime.MemStats
+	runtime.ReadMemStats(&before)
+	scan()
+	runtime.ReadMemStats(&after)
+	if spent := after.TotalAlloc - before.TotalAlloc; spent > 100*uint64(size) {
+		t.Errorf("%s: %d bytes allocated for a text of %d", name, spent, size)
+	} else {
+		t.Logf("%s: %.1f bytes a byte", name, float64(spent)/float64(size))
+	}
+}

@@ -33,6 +33,10 @@ type LabelColumn struct {
 	Labels []string
 }
 
+// MaxColumns is the largest number of columns that are read. More are refused as JSON nested too deeply is: what each
+// column costs besides its rows must not add up to many times what was sent.
+const MaxColumns = 100_000
+
 // maxRows is the largest number of rows that codes can address.
 const maxRows = 1<<30 - 2
 

@@ -1,7 +1,6 @@
 package data
 
 import (
-	"slices"
 	"strconv"
 
 	"guardrow/api"
@@ -208,33 +207,25 @@ func (s *scan) noLabel(name string, row int, what string) {
 	}
 }
 
-// lostTexts are the texts that stand for a lost reading.
+// lostTexts are the texts that stand for a lost reading, and the numbers among them.
 type lostTexts struct {
-	texts   []string
-	numbers []float64
+	texts   map[string]bool
+	numbers map[float64]bool
 }
 
 func newLostTexts(texts []string) lostTexts {
-	l := lostTexts{texts: slices.Clone(texts)}
+	l := lostTexts{texts: make(map[string]bool, len(texts)), numbers: make(map[float64]bool)}
 	for _, text := range texts {
+		l.texts[text] = true
 		if x, ok := parseDecimal([]byte(text)); ok {
-			l.numbers = append(l.numbers, x.float())
+			l.numbers[x.float()+0] = true
 		}
 	}
 	return l
 }
 
 // text reports whether a text stands for a lost reading.
-func (l *lostTexts) text(text []byte) bool {
-	for _, t := range l.texts {
-		if t == string(text) {
-			return true
-		}
-	}
-	return false
-}
+func (l *lostTexts) text(text []byte) bool { return l.texts[string(text)] }
 
 // number reports whether a number does.
-func (l *lostTexts) number(x *decimal) bool {
-	return len(l.numbers) > 0 && slices.Contains(l.numbers, x.float())
-}
+func (l *lostTexts) number(x *decimal) bool { return len(l.numbers) > 0 && l.numbers[x.float()+0] }

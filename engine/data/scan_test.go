@@ -189,6 +189,26 @@ func TestTooManyRows(t *testing.T) {
 	}
 }
 
+func TestTooManyColumns(t *testing.T) {
+	for _, n := range []int{MaxColumns, MaxColumns + 1} {
+		var columns, header strings.Builder
+		columns.WriteString(`{"reader":[1]`)
+		header.WriteString("reader")
+		for i := range n - 1 {
+			fmt.Fprintf(&columns, `,"y%d":[1]`, i)
+			fmt.Fprintf(&header, ",y%d", i)
+		}
+		_, faults, err := ScanJSON([]byte(columns.String()+"}"), Plan{Factors: []string{"reader"}})
+		if over := n > MaxColumns; over != (err != nil) || faults != nil {
+			t.Errorf("%d columns: %v, %v", n, faults, err)
+		}
+		_, faults = ScanCSV([]byte(header.String()+"\n"+strings.Repeat("1,", n-1)+"1"), Plan{Factors: []string{"reader"}})
+		if over := n > MaxColumns; over != (len(faults) == 1 && faults[0].Code == api.InvalidCSV) || !over && faults != nil {
+			t.Errorf("%d columns: %+v", n, faults)
+		}
+	}
+}
+
 // Texts that are not JSON stop the reading, with the byte.
 func TestSyntaxOfColumns(t *testing.T) {
 	cases := []struct {

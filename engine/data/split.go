@@ -191,16 +191,32 @@ func (s *splitter) bulk(pos int) int {
 // even number of quotes ends it: without backslashes every quote opens or closes a string, and without brackets it is not
 // deeper. If the array is not valid JSON the end may be wrong, but then its reader refuses it wherever it ends.
 func (s *splitter) array(pos int) int {
-	if s.at(pos) == '[' {
-		inside := s.text[pos+1:]
-		if end := bytes.IndexByte(inside, ']'); end >= 0 {
-			inside = inside[:end]
-			if bytes.IndexByte(inside, '\\') < 0 && bytes.IndexByte(inside, '[') < 0 && bytes.Count(inside, quote)&1 == 0 {
-				return pos + 1 + end + 1
+	if s.at(pos) != '[' {
+		return s.value(pos)
+	}
+	quotes := 0
+	for from := pos + 1; from < len(s.text); {
+		block := s.text[from:min(from+skipBlock, len(s.text))]
+		end := bytes.IndexByte(block, ']')
+		if end >= 0 {
+			block = block[:end]
+		}
+		if bytes.IndexByte(block, '\\') >= 0 || bytes.IndexByte(block, '[') >= 0 {
+			break
+		}
+		quotes += bytes.Count(block, quote)
+		from += len(block)
+		if end >= 0 {
+			if quotes&1 == 0 {
+				return from + 1
 			}
+			break
 		}
 	}
 	return s.value(pos)
 }
+
+// skipBlock is how much is looked at in one go, several times over: it stays close to the processor.
+const skipBlock = 1 << 14
 
 var quote = []byte{'"'}
