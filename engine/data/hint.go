@@ -26,6 +26,9 @@ func nearest(name string, known []string) string {
 		if k != name && sameButForm(k, name) {
 			return " Did you mean " + engine.Quote(k) + "? Case and blanks count."
 		}
+		if k != name && sameNumber(k, name) {
+			return " Did you mean " + engine.Quote(k) + "? A label is a text: the same number written otherwise is another."
+		}
 		if len(candidates) < nearLimit {
 			candidates = append(candidates, k)
 		}
@@ -36,6 +39,13 @@ func nearest(name string, known []string) string {
 // sameButForm reports whether two labels differ in nothing but case and blanks.
 func sameButForm(a, b string) bool {
 	return strings.EqualFold(strings.Join(strings.Fields(a), " "), strings.Join(strings.Fields(b), " "))
+}
+
+// sameNumber reports whether two labels are the same number, written differently.
+func sameNumber(a, b string) bool {
+	x, ok := parseDecimal([]byte(a))
+	y, also := parseDecimal([]byte(b))
+	return ok && also && string(x.append(nil)) == string(y.append(nil))
 }
 
 // readable returns text as valid UTF-8, cut to more than a message shows.

@@ -216,26 +216,31 @@ func labelLoop[T width](s *jsonScan, name string, d *dictionary, codes []T, pos,
 	}
 }
 
-// nearLabels reads labels from pos as long as they are short texts that were seen lately and are followed by another
+// nearLabels reads labels from pos as long as they are written alike, short, were seen lately and are followed by another
 // element. Their codes fit, since they were stored before.
 func nearLabels[T width](near *nearTable, text []byte, codes []T, pos, row int) (int, int) {
 	places, shift := near.places, near.shift&63
-	if places == nil {
+	if places == nil || pos >= len(text) {
 		return pos, row
 	}
-	for pos+12 <= len(text) && row < len(codes) && text[pos] == '"' {
-		key := word64(text, pos+1)
-		end := zeroBytes(key ^ '"'*ones)
+	opens := text[pos] == '"'
+	closing, way, quotes := uint64(','*ones), uint64(nearNumber), 0
+	if opens {
+		closing, way, quotes = '"'*ones, 0, 1
+	}
+	for pos+12 <= len(text) && row < len(codes) && (text[pos] == '"') == opens {
+		key := word64(text, pos+quotes)
+		end := zeroBytes(key ^ closing)
 		if end == 0 {
 			break
 		}
 		n := bits.TrailingZeros64(end) &^ 7
-		key = key&(1<<(n&63)-1) | uint64(n)<<53
+		key = key&(1<<(n&63)-1) | uint64(n)<<53 | way
 		place := &places[nearHash(key)>>shift]
 		if place.key != key || n == 0 {
 			break
 		}
-		next := pos + 2 + n>>3
+		next := pos + 2*quotes + n>>3
 		if text[next] != ',' {
 			break
 		}
@@ -277,8 +282,12 @@ func (d *dictionary) quick(text []byte, pos int) (entry uint32, end int) {
 	if entry&written == 0 {
 		return 0, 0
 	}
-	if n < 64 && written == asText {
-		d.near.put(lo|uint64(n)<<53, entryNumber(entry), len(d.words))
+	if n < 64 {
+		way := uint64(0)
+		if written == asNumber {
+			way = nearNumber
+		}
+		d.near.put(lo|uint64(n)<<53|way, entryNumber(entry), len(d.words))
 	}
 	return entry, pos + n>>3 + int(written>>1) // past the closing quote
 }

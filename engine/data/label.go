@@ -15,7 +15,7 @@ import (
 type dictionary struct {
 	slots []uint32 // open addressing, a power of two of them, at most half of them taken
 	mask  uint64
-	near  nearTable   // of labels that stand between quotes in JSON, or without any in CSV
+	near  nearTable
 	words [][2]uint64 // by number
 	// longs are the labels of 16 bytes and more, whose words are their position in longs and longMark.
 	longs []string
@@ -141,6 +141,9 @@ type nearTable struct {
 	places []nearPlace // a power of two of them; nil once given up
 	shift  int
 }
+
+// nearNumber is a bit of the keys of labels that are written as JSON numbers, above the length.
+const nearNumber = 1 << 60
 
 type nearPlace struct {
 	key    uint64 // 0 for a free place

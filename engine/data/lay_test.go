@@ -366,3 +366,13 @@ func throughText(t *testing.T, tb *table, style int) *Columns {
 	}
 	return columns
 }
+
+// What a label may have been meant as.
+func TestHints(t *testing.T) {
+	known := []string{"gel", "plain", "1", "-80"}
+	for label, hint := range map[string]string{"Gel": "“gel”? Case and blanks count", "gel ": "“gel”", "plan": "“plain”?", "1.0": "“1”? A label is a text", "-80.00": "“-80”", "heparin": "", "": ""} {
+		if got := nearest(label, known); hint == "" && got != "" || !strings.Contains(got, hint) {
+			t.Errorf("%q: %q, want %q", label, got, hint)
+		}
+	}
+}

@@ -47,6 +47,20 @@ func TestSplit(t *testing.T) {
 	}
 }
 
+// Arrays are skipped a block at a time: where a block ends must not matter.
+func TestSplitLongArrays(t *testing.T) {
+	for _, label := range []string{`"a"`, `"]"`, `"[,\"]"`, `[1]`, `"a", "]"`} {
+		for n := skipBlock - 12; n < skipBlock+4; n++ {
+			array := `[` + strings.Repeat(" ", n) + label + `,"b` + strings.Repeat("c", skipBlock) + `"]`
+			body := `{"data": {"x": ` + array + `, "y": ` + array + `}, "a": 1}`
+			parts, err := Split([]byte(body), "data")
+			if err != nil || string(parts.Envelope) != `{ "a": 1}` {
+				t.Fatalf("%s after %d blanks: %v, %v", label, n, parts, err)
+			}
+		}
+	}
+}
+
 func TestSplitReportsDuplicates(t *testing.T) {
 	parts, err := Split([]byte(`{"a": 1, "data": {"x": [1]}, "\u0061": 2, "data": {}, "a": 3}`), "data")
 	want := []Member{{"a", 29}, {"data", 42}, {"a", 54}}
