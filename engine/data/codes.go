@@ -1,7 +1,5 @@
 package data
 
-import "math"
-
 // width is the type of a code.
 type width interface{ ~uint8 | ~uint16 | ~uint32 }
 
@@ -11,14 +9,14 @@ func widest[T width]() uint32 {
 	return uint32(^zero)
 }
 
-// size returns a slice of n codes of a type.
+// grown returns codes in a slice of n.
 func grown[T width](codes []T, n int) []T {
 	longer := make([]T, n)
 	copy(longer, codes)
 	return longer
 }
 
-// widened returns codes in another type.
+// widened returns the first n codes in a wider type, with as much room as there was.
 func widened[T, U width](codes []U, n int) []T {
 	wide := make([]T, len(codes))
 	for i, c := range codes[:n] {
@@ -38,17 +36,6 @@ func codesOf[T width](codes []T) Codes {
 		return Codes{U32: c}
 	}
 	panic("data: codes of an unknown width")
-}
-
-// makeCodes returns n codes, all 0, of the narrowest width for this many levels.
-func makeCodes(n int, levels int64) Codes {
-	switch {
-	case levels <= math.MaxUint8+1:
-		return Codes{U8: make([]uint8, n)}
-	case levels <= math.MaxUint16+1:
-		return Codes{U16: make([]uint16, n)}
-	}
-	return Codes{U32: make([]uint32, n)}
 }
 
 // Len returns the number of rows.

@@ -3,6 +3,7 @@ package data
 import (
 	"fmt"
 	"maps"
+	"math"
 	"math/rand/v2"
 	"slices"
 	"strings"
@@ -47,6 +48,17 @@ func (tb *table) columns() *Columns {
 	}
 	c.Responses = []Response{{Name: "y", Offsets: offsets}}
 	return c
+}
+
+// makeCodes returns n codes, all 0, of the narrowest width for this many levels.
+func makeCodes(n int, levels int64) Codes {
+	switch {
+	case levels <= math.MaxUint8+1:
+		return Codes{U8: make([]uint8, n)}
+	case levels <= math.MaxUint16+1:
+		return Codes{U16: make([]uint16, n)}
+	}
+	return Codes{U32: make([]uint32, n)}
 }
 
 // path returns the labels of a row at the factors in s: what tells one level of a nested factor from another.
