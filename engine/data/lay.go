@@ -156,7 +156,7 @@ func renumberCodes[T width](codes []T, levels []uint32) {
 const chunk = 2048
 
 // even reports whether every cell has as many readings as there are replicates. There are cells × replicates rows, so
-// that is so if none has more.
+// that is so if none has more; and then every level is there.
 func (l *layout) even() bool {
 	replicates := l.design.Replicates()
 	cells := int(l.design.Cells())

@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"math"
 	"math/big"
+	"math/bits"
 	"math/rand/v2"
 	"reflect"
 	"slices"
@@ -259,6 +260,12 @@ func TestKnownLabelsDoNotExcuseBadJSON(t *testing.T) {
 	pad := strings.Repeat(" ", 40)
 	for _, bad := range []string{`["gel", gel]`, "[\"a\\tb\", \"a\tb\"]", `["true", true1]`, `["1.", 1.]`, `["01", 01]`, `["-", -]`} {
 		text := `{"reader": ` + bad + `, "density": [1, 2]}` + pad
+		if _, _, err := ScanJSON([]byte(text), twoColumns()); err == nil {
+			t.Errorf("%s was taken", text)
+		}
+	}
+	for _, bad := range []string{"01.5", "00.5", "-01.5", "1.5.5", "1.", "-", "-.5", "1.5-", "12345678901.", "012345678901.5"} {
+		text := `{"reader": [1, 1, 1], "density": [1.5, ` + bad + `, 2.5]}` + pad
 		if _, _, err := ScanJSON([]byte(text), twoColumns()); err == nil {
 			t.Errorf("%s was taken", text)
 		}
@@ -589,5 +596,45 @@ func TestEstimatesDoNotMatter(t *testing.T) {
 				t.Fatalf("%q: row %d is %v", label, row, r)
 			}
 		}
+	}
+}
+
+// A quotient that misses the middle between two doubles by less than 64 bits can tell is rounded by what is left over.
+func TestDivisionNearTies(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		middle := rapid.Uint64Range(1<<53, 1<<54-1).Draw(t, "double")<<1 | 1
+		by := powers[rapid.IntRange(0, mantissaDigits).Draw(t, "decimals")]
+		hi, lo := bits.Mul64(middle, by)
+		n := new(big.Int).Add(new(big.Int).Lsh(new(big.Int).SetUint64(hi), 64), new(big.Int).SetUint64(lo))
+		n.Add(n, big.NewInt(rapid.Int64Range(-2, 2).Draw(t, "aside")))
+		want, _ := new(big.Rat).SetFrac(n, new(big.Int).SetUint64(by)).Float64()
+		low := new(big.Int).And(n, new(big.Int).SetUint64(math.MaxUint64)).Uint64()
+		if got := divide128(new(big.Int).Rsh(n, 64).Uint64(), low, by); got != want {
+			t.Fatalf("%v / %d: %v, want %v", n, by, got, want)
+		}
+	})
+}
+
+// Readings too far apart to share a shift are kept plain, whichever comes first, and what is wrong is told once.
+func TestFarApart(t *testing.T) {
+	for _, readings := range []string{"1e-300, 1e300, 7", "1e300, 1e-300, 7", "5, 5, 1.5e308, -1.5e308", "1.5e308, -1.5e308", "1, 123456789012345678901234567890.5"} {
+		n := strings.Count(readings, ",")
+		columns, faults, err := ScanJSON([]byte(`{"density": [`+readings+`], "reader": [`+strings.Repeat("1,", n)+`1]}`), twoColumns())
+		if faults != nil || err != nil {
+			t.Fatal(faults, err)
+		}
+		for row, text := range strings.Split(readings, ", ") {
+			if r := columns.Responses[0]; r.exact != "0" || r.Shift != 0 || r.Offsets[row] != x64(text) {
+				t.Errorf("%s: got %+v", readings, r)
+			}
+		}
+	}
+	faults := faultsOf(t, `{"density": [1e-300, null, "x", 1e999, 1e300, null], "reader": [1, 1, 1, 1, 1, 1]}`, twoColumns())
+	places := make([]string, 0, len(faults))
+	for _, f := range faults {
+		places = append(places, f.Place)
+	}
+	if want := []string{"data/density/1", "data/density/5", "data/density/2", "data/density/3"}; !slices.Equal(places, want) {
+		t.Errorf("faults at %v, want %v", places, want)
 	}
 }
