@@ -6,7 +6,7 @@ package ems_test
 // table is the explicit rows of a plan: column c < len(factors) holds the labels of a factor, a nested factor's being
 // different in different parents; the last column numbers the rows.
 type table struct {
-	columns   [][]int32
+	columns   []*partition
 	n         int
 	partition map[uint32]*partition // by set of columns
 }
@@ -22,54 +22,55 @@ type partition struct {
 func newTable(p *plan) *table {
 	n := int(p.rows())
 	t := &table{n: n, partition: make(map[uint32]*partition)}
-	own := make([][]int32, len(p.factors)) // level within parents, by row
+	whole := &partition{cell: make([]int32, n), cells: 1, pairs: int64(n) * int64(n)}
+	t.partition[0] = whole
+	own := make([]*partition, len(p.factors)) // level within parents, by row
 	each := 1
 	for i, f := range p.factors {
-		own[i] = make([]int32, n)
-		for row := range own[i] {
-			own[i][row] = int32(row / each % int(f.levels))
-		}
+		own[i] = byLabel(n, func(row int) int { return row / each % int(f.levels) })
 		each *= int(f.levels)
 	}
-	t.columns = make([][]int32, len(p.factors)+1)
-	var label func(i int) []int32
-	label = func(i int) []int32 {
+	t.columns = make([]*partition, len(p.factors)+1)
+	var label func(i int) *partition
+	label = func(i int) *partition {
 		if t.columns[i] == nil {
-			cell := own[i]
+			t.columns[i] = own[i]
 			for _, parent := range p.factors[i].within {
-				cell = refine(cell, label(parent)).cell
+				t.columns[i] = refine(t.columns[i], label(parent))
 			}
-			t.columns[i] = cell
 		}
 		return t.columns[i]
 	}
 	for i := range p.factors {
 		label(i)
 	}
-	rows := make([]int32, n)
-	for row := range rows {
-		rows[row] = int32(row)
-	}
-	t.columns[len(p.factors)] = rows
-	t.partition[0] = refine(make([]int32, n), make([]int32, n))
+	t.columns[len(p.factors)] = byLabel(n, func(row int) int { return row })
 	return t
 }
 
-// refine groups rows that share both labels.
-func refine(a, b []int32) *partition {
-	p := &partition{cell: make([]int32, len(a))}
-	number := make(map[[2]int32]int32, 64)
+// byLabel groups rows by a label from 0 to n−1.
+func byLabel(n int, label func(row int) int) *partition {
+	p := &partition{cell: make([]int32, n)}
+	for row := range p.cell {
+		p.cell[row] = int32(label(row))
+	}
+	p.cells = n
+	return refine(&partition{cell: make([]int32, n), cells: 1}, p)
+}
+
+// refine groups rows that are in one cell of a and in one cell of b.
+func refine(a, b *partition) *partition {
+	p := &partition{cell: make([]int32, len(a.cell))}
+	number := make([]int32, a.cells*b.cells) // 1 + the number of a cell; 0 where it is new
 	var size []int64
-	for row := range a {
-		key := [2]int32{a[row], b[row]}
-		k, known := number[key]
-		if !known {
-			k = int32(len(size))
-			number[key] = k
+	for row := range a.cell {
+		k := &number[int(a.cell[row])*b.cells+int(b.cell[row])]
+		if *k == 0 {
 			size = append(size, 0)
+			*k = int32(len(size))
 		}
-		p.cell[row] = k
-		size[k]++
+		p.cell[row] = *k - 1
+		size[*k-1]++
 	}
 	p.cells = len(size)
 	for _, s := range size {
@@ -89,10 +90,14 @@ func (t *table) of(columns uint32) *partition {
 			last = c
 		}
 	}
-	p := refine(t.of(columns&^(1<<last)).cell, t.columns[last])
+	if last == len(t.columns)-1 { // each row by itself
+		t.partition[columns] = t.columns[last]
+		return t.columns[last]
+	}
+	p := refine(t.of(columns&^(1<<last)), t.columns[last])
 	t.partition[columns] = p
 	return p
 }
 
 // finer reports whether every cell of a lies in one cell of b.
-func finer(a, b *partition) bool { return refine(a.cell, b.cell).cells == a.cells }
+func finer(a, b *partition) bool { return refine(a, b).cells == a.cells }
