@@ -70,11 +70,13 @@ type subject struct {
 	model  *ems.Model
 	matrix *matrix
 	pooled *pooled
+
+	derived map[string]*subject // changed plans, by plan
 }
 
 func newSubject(t *testing.T, cover coverage, p *plan) *subject {
 	t.Helper()
-	s := &subject{reference: newReference(p), t: t, cover: cover, design: p.check(t)}
+	s := &subject{reference: newReference(p), t: t, cover: cover, design: p.check(t), derived: make(map[string]*subject)}
 	s.model = ems.New(s.design)
 	s.matrix = newMatrix(s.expectations())
 	s.pooled = s.matrix.pool(s.df, s.declaredNull())
@@ -372,8 +374,39 @@ func (s *subject) compareTest(k int, test ems.Test) {
 		}
 		last = at
 	}
+	s.compareForms(k, test)
 	if len(test.Solution) != len(want) || test.NoDF || len(test.Unmatched) > 0 || !test.Testable() || test.Exact() != (len(want) == 1) {
 		s.errorf("the test of %s is %+v, by elimination %v", s.name(k), test, want)
+	}
+}
+
+// compareForms holds both forms of F to what they are for: with the component of s zero, numerator and denominator expect
+// the same; and in the sum form nothing is subtracted.
+func (s *subject) compareForms(k int, test ems.Test) {
+	s.t.Helper()
+	for _, difference := range []bool{false, true} {
+		left := make([]*big.Rat, len(s.terms))
+		for t := range left {
+			left[t] = new(big.Rat)
+		}
+		add := func(side []ems.Weight, sign int64) {
+			for _, w := range side {
+				if w.Weight.Sign() <= 0 && !difference {
+					s.errorf("the sum form for %s subtracts %s", s.name(k), s.design.Name(w.Set))
+				}
+				for t := range left {
+					part := new(big.Rat).Mul(w.Weight.Rat(), s.matrix.rat[s.position(w.Set)][t])
+					left[t].Add(left[t], part.Mul(part, big.NewRat(sign, 1)))
+				}
+			}
+		}
+		add(test.Numerator(difference), 1)
+		add(test.Denominator(difference), -1)
+		for t, x := range left {
+			if x.Sign() != 0 && t != k && !s.pooled.null[t] || t == k && x.Sign() <= 0 {
+				s.errorf("in F of %s, numerator less denominator holds %s of %s", s.name(k), x.RatString(), s.name(t))
+			}
+		}
 	}
 }
 
