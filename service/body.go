@@ -58,16 +58,15 @@ func (in *intake) close() { in.service.buffer.giveBack(in.taken) }
 
 // whole reads the body as it is.
 func (in *intake) whole() ([]byte, error) {
-	size := in.x.Request().ContentLength
-	if size < 0 {
-		size = firstRead
-	}
-	return in.read(in, size)
+	return in.read(in, in.x.Request().ContentLength)
 }
 
-// read reads all of source, which reads from in, into one piece of memory, of the announced size if that is right. The memory
-// counts against the service's buffer.
+// read reads all of source, which reads from in, into one piece of memory, of the announced size if that is right; a negative
+// size is unknown. The memory counts against the service's buffer.
 func (in *intake) read(source io.Reader, size int64) ([]byte, error) {
+	if size < 0 {
+		size = min(firstRead, in.left)
+	}
 	room := min(size, firstTrust) + 1 // one more, so that the end is found without growing
 	if err := in.take(room); err != nil {
 		return nil, err

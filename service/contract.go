@@ -95,6 +95,7 @@ func (c *contract) serve(x *exchange, media string, t text) error {
 	header.Set("Content-Type", media)
 	header.Set("ETag", t.tag)
 	header.Set("Cache-Control", "no-cache")
+	x.Request().Header.Del("Range") // whole or not at all
 	http.ServeContent(x.Response(), x.Request(), "", time.Time{}, bytes.NewReader(t.content))
 	return nil
 }
@@ -105,6 +106,7 @@ func (c *contract) asset(x *exchange) error {
 	if !pageFiles[name] {
 		return refuse(api.NotFound, "", "The page has no file of this name.")
 	}
+	x.Request().Header.Del("Range")
 	c.assets.ServeHTTP(x.Response(), x.Request())
 	return nil
 }

@@ -5,9 +5,11 @@ import (
 	"context"
 	"encoding/json"
 	"flag"
+	"fmt"
 	"io"
 	"net/http"
 	"net/http/httptest"
+	"os"
 	"strings"
 	"sync"
 	"testing"
@@ -25,6 +27,13 @@ import (
 var update = flag.Bool("update", false, "write the answers among the contract's examples")
 
 func TestMain(m *testing.M) {
+	if address := os.Getenv(clientVariable); address != "" {
+		if err := beClient(address); err != nil {
+			fmt.Fprintln(os.Stderr, err)
+			os.Exit(1)
+		}
+		os.Exit(0)
+	}
 	flag.Parse()
 	goleak.VerifyTestMain(m)
 }
@@ -141,7 +150,7 @@ func (s *server) request(t testing.TB, method, path, body string, header ...stri
 
 // theContract is the contract as a third party reads it, loaded once.
 var theContract = sync.OnceValues(func() (*openapi3.T, error) {
-	for _, media := range []string{"text/html", "text/css", "text/javascript", "application/yaml", "image/png"} {
+	for _, media := range []string{"text/html", "text/css", "application/javascript", "application/yaml", "image/png"} {
 		openapi3filter.RegisterBodyDecoder(media, func(body io.Reader, _ http.Header, _ *openapi3.SchemaRef, _ openapi3filter.EncodingFn) (any, error) {
 			text, err := io.ReadAll(body)
 			return string(text), err
@@ -180,7 +189,7 @@ func (r *reply) hold(t testing.TB, request *http.Request) {
 	}
 	routed := &http.Request{Method: request.Method, URL: request.URL, Header: request.Header}
 	route, parameters, err := router.FindRoute(routed)
-	if err != nil {
+	if err != nil || strings.HasSuffix(request.URL.Path, "/") { // that router overlooks a last slash
 		r.holdToProblem(t, doc)
 		return
 	}

@@ -2,10 +2,12 @@ package service
 
 import (
 	"context"
-	"encoding/json"
 	"errors"
 	"fmt"
 	"net/http"
+
+	"github.com/go-json-experiment/json"
+	"github.com/go-json-experiment/json/jsontext"
 
 	"guardrow/api"
 	"guardrow/engine"
@@ -118,9 +120,10 @@ func observations(d *api.Design) int64 {
 	return n
 }
 
-// decode decodes an envelope that is of the contract's shape. That it does not fit the Go type is a defect.
+// decode decodes an envelope that is of the contract's shape. That it does not fit the Go type is a defect. The check has
+// refused duplicate names already.
 func decode(r *request, into any) error {
-	if err := json.Unmarshal(r.text, into); err != nil {
+	if err := json.Unmarshal(r.text, into, jsontext.AllowDuplicateNames(true)); err != nil {
 		return fmt.Errorf("a request of the contract's shape does not fit %T", into)
 	}
 	return nil
@@ -129,6 +132,9 @@ func decode(r *request, into any) error {
 // post answers a request to an operation.
 func (s *Service) post(x *exchange, o *operation) error {
 	x.Response().Header()["Cache-Control"] = noStore
+	if s.stopped() {
+		return shuttingDown()
+	}
 	if !acceptsJSON(x.Request().Header) {
 		return refuse(api.NotAcceptable, "", "The header Accept admits no media type of this operation's answers. Send application/json in it, or leave it out.")
 	}
