@@ -23,6 +23,10 @@ func FuzzScanJSON(f *testing.F) {
 	}
 	f.Fuzz(func(t *testing.T, text []byte) {
 		columns, faults, err := ScanJSON(text, twoColumns())
+		slow, faultsToo, errToo := ScanJSON(text, withNumber())
+		if (err == nil) != (errToo == nil) || columns != nil && slow != nil && !reflect.DeepEqual(columns, slow) || slow != nil && columns == nil || faultsToo == nil && faults != nil {
+			t.Fatalf("quick %v, %v, %v; slow %v, %v, %v", columns, faults, err, slow, faultsToo, errToo)
+		}
 		ok := valid(text) && strings.HasPrefix(strings.TrimLeft(string(text), " \t\r\n"), "{")
 		if (err == nil) != ok {
 			t.Fatalf("error %v, valid %v", err, ok)
@@ -73,6 +77,9 @@ func FuzzScanCSV(f *testing.F) {
 	}
 	f.Fuzz(func(t *testing.T, text []byte) {
 		columns, faults := ScanCSV(text, twoColumns())
+		if slow, _ := ScanCSV(text, withNumber()); slow != nil && !reflect.DeepEqual(columns, slow) {
+			t.Fatalf("quick %v, slow %v", columns, slow)
+		}
 		if (columns == nil) == (len(faults) == 0) {
 			t.Fatal("columns and faults, or neither")
 		}

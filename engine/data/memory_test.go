@@ -166,9 +166,14 @@ func TestHostileShapes(t *testing.T) {
 			})
 		}
 	}
+	var header strings.Builder
+	for i := range 5000 {
+		fmt.Fprintf(&header, "c%d,", i)
+	}
 	csv := map[string]string{
 		"many columns, many empty lines": strings.Repeat("c,", 50_000) + "reader,density\n" + fill("\n"),
 		"many columns, short lines":      strings.Repeat("c,", 50_000) + "reader,density\n" + fill("1\n"),
+		"columns and empty lines":        header.String() + "reader,density\n" + fill("\n"),
 		"quotes":                         "reader,density\n\"" + fill(`""`) + "\",1\n",
 		"commas":                         "reader,density\n" + fill(",") + "\n",
 	}
