@@ -1,68 +1,89 @@
 package engine
 
 import (
+	"cmp"
+	"math"
 	"math/big"
 	"math/bits"
 	"strconv"
 )
 
-// Rational is an exact rational number. Whole numbers that fit an int64 are kept as such, all others as a big.Rat, so that
-// designs without finite populations cost integer arithmetic only. Values are immutable; the zero Rational is 0.
+// Rational is an exact rational number. Where numerator and denominator fit an int64 they are kept as such, all others as a
+// big.Rat. Values are immutable, and always in lowest terms; the zero Rational is 0.
 type Rational struct {
-	whole    int64
-	fraction *big.Rat // nil for a whole number
+	num, rest int64    // num/(rest + 1)
+	large     *big.Rat // nil where num and rest serve
 }
 
 // Whole returns n as a Rational.
-func Whole(n int64) Rational { return Rational{whole: n} }
+func Whole(n int64) Rational { return Rational{num: n} }
 
-// Fraction returns num/den; den is not 0.
-func Fraction(num, den int64) Rational { return normal(big.NewRat(num, den)) }
+// Fraction returns num/den; den is above 0.
+func Fraction(num, den int64) Rational {
+	if num == math.MinInt64 {
+		return normal(big.NewRat(num, den))
+	}
+	if g := divisor(num, den); g > 1 {
+		num, den = num/g, den/g
+	}
+	return Rational{num: num, rest: den - 1}
+}
+
+// divisor returns the greatest common divisor of |a| and b > 0.
+func divisor(a, b int64) int64 {
+	for a != 0 {
+		a, b = b%a, a
+	}
+	return max(b, -b)
+}
 
 func normal(r *big.Rat) Rational {
-	if r.IsInt() && r.Num().IsInt64() {
-		return Rational{whole: r.Num().Int64()}
+	if r.Num().IsInt64() && r.Denom().IsInt64() {
+		return Rational{num: r.Num().Int64(), rest: r.Denom().Int64() - 1}
 	}
-	return Rational{fraction: r}
+	return Rational{large: r}
 }
+
+// den returns the denominator of a number that is not large.
+func (q Rational) den() int64 { return q.rest + 1 }
 
 // Rat returns q as a big.Rat that the caller may change.
 func (q Rational) Rat() *big.Rat {
-	if q.fraction == nil {
-		return new(big.Rat).SetInt64(q.whole)
+	if q.large != nil {
+		return new(big.Rat).Set(q.large)
 	}
-	return new(big.Rat).Set(q.fraction)
+	return big.NewRat(q.num, q.den())
 }
 
 // Sign returns -1, 0 or 1.
 func (q Rational) Sign() int {
-	switch {
-	case q.fraction != nil:
-		return q.fraction.Sign()
-	case q.whole < 0:
-		return -1
-	case q.whole > 0:
-		return 1
+	if q.large != nil {
+		return q.large.Sign()
 	}
-	return 0
+	return cmp.Compare(q.num, 0)
 }
 
 // IsOne reports whether q = 1.
-func (q Rational) IsOne() bool { return q.fraction == nil && q.whole == 1 }
+func (q Rational) IsOne() bool { return q.large == nil && q.num == 1 && q.rest == 0 }
 
 // Equal reports whether q = r.
 func (q Rational) Equal(r Rational) bool {
-	if q.fraction == nil || r.fraction == nil {
-		return q.fraction == nil && r.fraction == nil && q.whole == r.whole
+	if q.large == nil || r.large == nil {
+		return q == r
 	}
-	return q.fraction.Cmp(r.fraction) == 0
+	return q.large.Cmp(r.large) == 0
 }
 
 // Mul returns q·r.
 func (q Rational) Mul(r Rational) Rational {
-	if q.fraction == nil && r.fraction == nil {
-		if p, ok := multiply(q.whole, r.whole); ok {
-			return Rational{whole: p}
+	if q.large == nil && r.large == nil {
+		num, fits := multiply(q.num, r.num)
+		if q.rest == 0 && r.rest == 0 && fits {
+			return Rational{num: num}
+		}
+		den, alsoFits := multiply(q.den(), r.den())
+		if fits && alsoFits {
+			return Fraction(num, den)
 		}
 	}
 	return normal(new(big.Rat).Mul(q.Rat(), r.Rat()))
@@ -70,9 +91,13 @@ func (q Rational) Mul(r Rational) Rational {
 
 // Sub returns q − r.
 func (q Rational) Sub(r Rational) Rational {
-	if q.fraction == nil && r.fraction == nil {
-		if s := q.whole - r.whole; (s < q.whole) == (r.whole > 0) {
-			return Rational{whole: s}
+	if q.large == nil && r.large == nil {
+		left, fitsLeft := multiply(q.num, r.den())
+		right, fitsRight := multiply(r.num, q.den())
+		den, fits := multiply(q.den(), r.den())
+		num := left - right
+		if fits && fitsLeft && fitsRight && (num < left) == (right > 0) {
+			return Fraction(num, den)
 		}
 	}
 	return normal(new(big.Rat).Sub(q.Rat(), r.Rat()))
@@ -86,27 +111,30 @@ func (q Rational) Neg() Rational { return Rational{}.Sub(q) }
 
 // Quo returns q/r; r is not 0.
 func (q Rational) Quo(r Rational) Rational {
-	if r.IsOne() {
-		return q
+	if r.large == nil && r.num > 0 {
+		return q.Mul(Rational{num: r.den(), rest: r.num - 1})
 	}
 	return normal(new(big.Rat).Quo(q.Rat(), r.Rat()))
 }
 
 // Float64 returns the nearest double.
 func (q Rational) Float64() float64 {
-	if q.fraction == nil {
-		return float64(q.whole)
+	if q.large == nil && q.rest == 0 {
+		return float64(q.num)
 	}
-	x, _ := q.fraction.Float64()
+	x, _ := q.Rat().Float64()
 	return x
 }
 
 // String returns an integer, or a fraction in lowest terms such as "3/4".
 func (q Rational) String() string {
-	if q.fraction == nil {
-		return strconv.FormatInt(q.whole, 10)
+	switch {
+	case q.large != nil:
+		return q.large.RatString()
+	case q.rest == 0:
+		return strconv.FormatInt(q.num, 10)
 	}
-	return q.fraction.RatString()
+	return strconv.FormatInt(q.num, 10) + "/" + strconv.FormatInt(q.den(), 10)
 }
 
 // multiply returns a·b, and whether it fits.

@@ -13,6 +13,7 @@ type zeroSearch struct {
 	term   engine.Set
 	budget *Budget
 	lines  []engine.Set // those that contain the term, each after all its subsets
+	null   []engine.Set // terms that are negligible already and have degrees of freedom
 	zero   []bool       // by line: assumed zero in the trial at hand
 	trial  []engine.Set
 	weight []engine.Rational // by line
@@ -20,12 +21,18 @@ type zeroSearch struct {
 }
 
 func newZeroSearch(m *Model, s engine.Set, budget *Budget) *zeroSearch {
-	return &zeroSearch{
+	z := &zeroSearch{
 		model: m, term: s, budget: budget,
 		lines:  slices.Collect(m.above(s)),
 		zero:   make([]bool, len(m.Lines)),
 		weight: make([]engine.Rational, len(m.Lines)),
 	}
+	for i, t := range m.Design.Terms() {
+		if m.line[i] < 0 && m.Design.DF(t) > 0 {
+			z.null = append(z.null, t)
+		}
+	}
+	return z
 }
 
 // candidates returns the terms that can matter when their components are assumed zero, those of highest order first: those
@@ -77,7 +84,7 @@ func (z *zeroSearch) feeders(t engine.Set, matters []bool) {
 	for _, l := range m.inside(t) {
 		feed(m.Lines[l].Set)
 	}
-	for _, s := range m.Apart {
+	for _, s := range z.null {
 		feed(s)
 	}
 }
@@ -124,14 +131,15 @@ func (z *zeroSearch) serves(sets []engine.Set) bool {
 }
 
 // available reports whether line t has degrees of freedom in the trial: its own and those pooled into it already stay;
-// others come from terms assumed zero, or so far apart, that now pool into it.
+// others come from terms assumed zero, or negligible before, that now pool into it.
 func (z *zeroSearch) available(t engine.Set) bool {
 	m := z.model
 	if m.Lines[m.Line(t)].DF > 0 {
 		return true
 	}
-	for _, list := range [][]engine.Set{z.trial, m.Apart} {
+	for _, list := range [][]engine.Set{z.trial, z.null} {
 		for _, s := range list {
+			z.budget.spend(1)
 			if s != t && t.Holds(s) && m.Design.DF(s) > 0 && z.pools(s, t) {
 				return true
 			}
