@@ -120,7 +120,7 @@ func (c *checker) next(s *shape) error {
 		if err != nil {
 			return err
 		}
-		c.fault(api.WrongType, wrongType(s, kind, raw))
+		c.fault(api.WrongType, func() string { return wrongType(s, kind, raw) })
 		return nil
 	}
 	switch kind {
@@ -187,7 +187,9 @@ func (c *checker) object(r *rule, elsewhere []string) error {
 		f := &r.fields[i]
 		c.path = append(c.path, step{f.name, -1})
 		if seen&(1<<uint(i)) != 0 {
-			c.fault(api.DuplicateKey, fmt.Sprintf("The field %s stands here twice. Keep one of the two.", f.name))
+			c.fault(api.DuplicateKey, func() string {
+				return fmt.Sprintf("The field %s stands here twice. Keep one of the two.", f.name)
+			})
 		}
 		seen |= 1 << uint(i)
 		if err := c.next(f.shape); err != nil {
@@ -243,10 +245,7 @@ func (c *checker) unknown(r *rule, name string) error {
 		c.path = append(c.path, step{name, -1})
 		defer func() { c.path = c.path[:len(c.path)-1] }()
 	}
-	if c.full() {
-		return nil
-	}
-	c.fault(api.UnknownField, unknownField(name, r.names))
+	c.fault(api.UnknownField, func() string { return unknownField(name, r.names) })
 	return nil
 }
 
@@ -255,7 +254,7 @@ func (c *checker) missing(r *rule, seen uint64) {
 		f := &r.fields[i]
 		if f.required && seen&(1<<uint(i)) == 0 {
 			c.path = append(c.path, step{f.name, -1})
-			c.fault(api.MissingField, fmt.Sprintf("The field %s is missing. Give it, as %s.", f.name, wanted(f.shape)))
+			c.fault(api.MissingField, func() string { return fmt.Sprintf("The field %s is missing. Give it, as %s.", f.name, wanted(f.shape)) })
 			c.path = c.path[:len(c.path)-1]
 		}
 	}
@@ -281,7 +280,7 @@ func (c *checker) list(r *rule) error {
 func (c *checker) textValue(r *rule, raw []byte) {
 	if r.words != nil {
 		if text := unquote(raw); !slices.Contains(r.words, text) {
-			c.fault(api.NotInEnumeration, notInEnumeration(text, r.words))
+			c.fault(api.NotInEnumeration, func() string { return notInEnumeration(text, r.words) })
 		}
 		return
 	}
@@ -306,39 +305,32 @@ func (c *checker) numberValue(s *shape, r *rule, raw []byte) {
 		return
 	}
 	if r.whole && x != math.Trunc(x) {
-		c.fault(api.WrongType, fractional(s))
+		c.fault(api.WrongType, func() string { return fractional(s) })
 		return
 	}
 	if r.min != nil && (x < *r.min || r.above && x == *r.min) || r.max != nil && (x > *r.max || r.below && x == *r.max) {
-		c.limit(outOfRange(r))
+		c.limit(func() string { return outOfRange(r) })
 	}
 }
 
 // size holds the length of a text or list to its bounds.
 func (c *checker) size(r *rule, n int, unit string) {
 	if n < r.least || r.most >= 0 && n > r.most {
-		c.limit(wrongSize(r, n, unit))
+		c.limit(func() string { return wrongSize(r, n, unit) })
 	}
 }
 
-func (c *checker) full() bool {
-	if c.count >= maxErrors {
-		c.count++
-		return true
-	}
-	return false
-}
-
-func (c *checker) fault(code api.Code, detail string) {
-	if !c.full() {
-		c.count++
-		c.faults = append(c.faults, api.ProblemError{Pointer: c.pointer(), Code: code, Detail: detail})
+// fault notes what is not of the shape at the present place. The sentence is made only if it will be listed.
+func (c *checker) fault(code api.Code, detail func() string) {
+	if c.count++; len(c.faults) < maxErrors {
+		c.faults = append(c.faults, api.ProblemError{Pointer: c.pointer(), Code: code, Detail: detail()})
 	}
 }
 
-func (c *checker) limit(detail string) {
+// limit notes a value outside its bounds.
+func (c *checker) limit(detail func() string) {
 	if len(c.limits) < maxErrors {
-		c.limits = append(c.limits, api.ProblemError{Pointer: c.pointer(), Code: api.OutOfBounds, Detail: detail})
+		c.limits = append(c.limits, api.ProblemError{Pointer: c.pointer(), Code: api.OutOfBounds, Detail: detail()})
 	}
 }
 

@@ -132,7 +132,7 @@ func TestContractIsServed(t *testing.T) {
 		t.Error("the contract that is served is not the one that was written")
 	}
 	asJSON := s.get(t, "/v1/openapi.json")
-	want, _, err := loadDocument(api.OpenAPI)
+	want, again, err := loadDocument(api.OpenAPI)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -141,8 +141,8 @@ func TestContractIsServed(t *testing.T) {
 	if toJSON(t, got) != toJSON(t, want) {
 		t.Error("the contract in JSON differs from the one in YAML")
 	}
-	if again := build(t, nil); string(again.contract.asJSON.content) != string(asJSON.body) {
-		t.Error("the contract in JSON is another one at each start")
+	if string(again)+"\n" != string(asJSON.body) {
+		t.Error("the contract in JSON is another one each time it is made")
 	}
 	if cached := s.request(t, http.MethodGet, "/v1/openapi.yaml", "", "If-None-Match", asYAML.header.Get("ETag")); cached.status != http.StatusNotModified {
 		t.Errorf("a known contract is sent again: %d", cached.status)

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"net/http"
 	"strings"
+	"sync"
 	"sync/atomic"
 
 	"github.com/labstack/echo/v4"
@@ -17,7 +18,7 @@ type Service struct {
 	options    Options
 	echo       *echo.Echo
 	patterns   map[string]string // from echo's patterns to the contract's paths
-	contract   contract
+	contract   *contract
 	operations []*operation
 	workers    *workers
 	buffer     *buffer
@@ -37,14 +38,12 @@ func New(options Options) (*Service, error) {
 	s.buffer = &buffer{most: s.options.MaxBuffered}
 	s.rates = newRates(s.options.Rate, s.options.Burst)
 	s.stopping, s.stop = context.WithCancel(context.Background())
-	document, asJSON, err := loadDocument(api.OpenAPI)
+	parts, err := theParts()
 	if err != nil {
 		return nil, err
 	}
-	if s.contract, err = newContract(asJSON); err != nil {
-		return nil, err
-	}
-	if s.operations, err = newOperations(newCompiler(document)); err != nil {
+	s.contract = &parts.contract
+	if s.operations, err = newOperations(parts.compiler); err != nil {
 		return nil, err
 	}
 	s.echo = echo.New()
@@ -56,6 +55,26 @@ func New(options Options) (*Service, error) {
 	}
 	return s, nil
 }
+
+// parts are what is made of the contract, which never changes.
+type parts struct {
+	contract contract
+	compiler *compiler
+}
+
+// theParts makes them, once for all services of a process.
+var theParts = sync.OnceValues(func() (*parts, error) {
+	document, asJSON, err := loadDocument(api.OpenAPI)
+	if err != nil {
+		return nil, err
+	}
+	p := &parts{compiler: newCompiler(document)}
+	if _, err := newOperations(p.compiler); err != nil { // so that the compiler only reads from here on
+		return nil, err
+	}
+	p.contract, err = newContract(asJSON)
+	return p, err
+})
 
 // ServeHTTP answers one request.
 func (s *Service) ServeHTTP(w http.ResponseWriter, r *http.Request) { s.echo.ServeHTTP(w, r) }
