@@ -119,8 +119,9 @@ func (q Rational) Quo(r Rational) Rational {
 
 // Float64 returns the nearest double.
 func (q Rational) Float64() float64 {
-	if q.large == nil && q.rest == 0 {
-		return float64(q.num)
+	const exact = 1 << 53 // up to here int64 and double agree, and one division is rounded once
+	if q.large == nil && (q.rest == 0 || -exact <= q.num && q.num <= exact && q.rest < exact) {
+		return float64(q.num) / float64(q.den())
 	}
 	x, _ := q.Rat().Float64()
 	return x

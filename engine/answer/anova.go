@@ -35,6 +35,11 @@ func Anova(ctx context.Context, request *api.AnovaRequest, readings Readings) (*
 	a, faults := newAnalyst(request)
 	columns, more, err := readings.scan(request)
 	if faults = append(faults, more...); err != nil || faults != nil {
+		if a != nil && columns != nil {
+			// Lost readings do not hide labels that do not match.
+			_, more = data.Lay(a.design, columns)
+			faults = append(faults, more...)
+		}
 		return nil, stats, faults, err
 	}
 	stats = Stats{Terms: len(a.design.Terms()), Observations: int64(columns.Rows)}

@@ -19,12 +19,13 @@ const (
 
 // namer names the terms of one design, each once.
 type namer struct {
-	design *engine.Design
-	terms  []api.Term
+	design     *engine.Design
+	terms      []api.Term
+	components []string
 }
 
 func newNamer(d *engine.Design) *namer {
-	return &namer{design: d, terms: make([]api.Term, len(d.Terms()))}
+	return &namer{design: d, terms: make([]api.Term, len(d.Terms())), components: make([]string, len(d.Terms()))}
 }
 
 // term returns the name of a term in both forms.
@@ -57,6 +58,9 @@ func (n *namer) effect(s engine.Set) string {
 // pooled lists the members of a pooled line. Where max_order pooled more than MaxPooledList terms into it, one entry stands
 // for those.
 func (n *namer) pooled(sets []engine.Set) []api.Pooled {
+	if len(sets) == 0 {
+		return []api.Pooled{}
+	}
 	above := &api.AboveOrder{AboveOrder: n.design.MaxOrder()}
 	for _, s := range sets {
 		if n.design.AboveOrder(s) {
@@ -64,7 +68,7 @@ func (n *namer) pooled(sets []engine.Set) []api.Pooled {
 			above.DF += n.design.DF(s)
 		}
 	}
-	list := []api.Pooled{}
+	var list []api.Pooled
 	for _, s := range sets {
 		if above.Terms <= MaxPooledList || !n.design.AboveOrder(s) {
 			list = append(list, api.Pooled{Term: n.name(s)})

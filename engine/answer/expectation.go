@@ -55,25 +55,33 @@ func (n *namer) expectation(m *ems.Model, s engine.Set, latex bool) api.Expected
 
 // sum writes components as a person would: "σ² + 2 σ²(box(temperature, freezer)) + 48 κ²(temperature)".
 func (n *namer) sum(components []ems.Component) string {
-	parts := make([]string, len(components))
+	var text strings.Builder
 	for i, c := range components {
-		parts[i] = n.component(c.Set)
-		if !c.Coefficient.IsOne() {
-			parts[i] = c.Coefficient.String() + " " + parts[i]
+		if i > 0 {
+			text.WriteString(" + ")
 		}
+		if !c.Coefficient.IsOne() {
+			text.WriteString(c.Coefficient.String())
+			text.WriteByte(' ')
+		}
+		text.WriteString(n.component(c.Set))
 	}
-	return strings.Join(parts, " + ")
+	return text.String()
 }
 
 // component writes a component: σ² for the residual, σ²(term) for a random term, κ²(term) for a fixed one.
 func (n *namer) component(s engine.Set) string {
+	text := &n.components[n.design.Index(s)]
 	switch {
+	case *text != "":
 	case s == n.design.Residual():
-		return "σ²"
+		*text = "σ²"
 	case n.design.IsRandom(s):
-		return "σ²(" + n.name(s) + ")"
+		*text = "σ²(" + n.name(s) + ")"
+	default:
+		*text = "κ²(" + n.name(s) + ")"
 	}
-	return "κ²(" + n.name(s) + ")"
+	return *text
 }
 
 // latexSum is sum in LaTeX, with the factors' symbols.

@@ -13,7 +13,8 @@ import (
 // and named in Ignored.
 //
 // It returns the columns; or what is wrong with them, all of it; or, where text is not one strict JSON object (see Valid), a
-// *SyntaxError, at which it stops.
+// *SyntaxError, at which it stops. Where only readings are wrong it returns the columns too, so that Lay can say what is
+// wrong with the labels; the grid is then of no use.
 func ScanJSON(text []byte, plan Plan) (*Columns, []engine.Fault, error) {
 	s := jsonScan{scan: newScan(&plan, "data", true), reader: reader{text: text}, rows: -1}
 	if end := s.object(s.space(0)); end >= 0 {

@@ -2,6 +2,7 @@ package data
 
 import (
 	"fmt"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -45,6 +46,11 @@ var whats = map[api.Code]string{
 }
 
 func (r *report) any() bool { return len(r.kinds) > 0 }
+
+// only reports whether there are no faults of other kinds.
+func (r *report) only(codes ...api.Code) bool {
+	return !slices.ContainsFunc(r.kinds, func(k *kind) bool { return !slices.Contains(codes, k.code) })
+}
 
 func (r *report) kind(code api.Code) *kind {
 	for _, k := range r.kinds {

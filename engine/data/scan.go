@@ -130,12 +130,15 @@ func (s *scan) size(rows int) {
 	}
 }
 
-// result returns the columns if nothing is wrong.
+// result returns the columns, unless more than readings is wrong.
 func (s *scan) result() (*Columns, []engine.Fault) {
-	if s.any() {
-		return nil, s.faults()
+	if !s.any() {
+		return s.columns, nil
 	}
-	return s.columns, nil
+	if s.only(api.LostReading, api.NonNumericReading, api.ReadingOutOfRange) {
+		return s.columns, s.faults()
+	}
+	return nil, s.faults()
 }
 
 // readings reads one column of readings.

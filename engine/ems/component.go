@@ -26,27 +26,26 @@ type Estimator struct {
 // observations behind each effect. What no line can take away stays in the sum, named so.
 func (m *Model) Estimators(only []engine.Set) []Estimator {
 	solver := m.NewSolver()
-	grouped := make(map[engine.Set]*Group)
 	groups := m.Inseparable()
-	for i := range groups {
-		for _, s := range groups[i].Sets {
-			grouped[s] = &groups[i]
+	group := func(s engine.Set) *Group {
+		for i := range groups {
+			if slices.Contains(groups[i].Sets, s) {
+				return &groups[i]
+			}
 		}
+		return &Group{Sets: []engine.Set{s}, Shares: []engine.Rational{engine.Whole(1)}}
 	}
-	var estimators []Estimator
-	done := make(map[*Group]bool)
+	estimators := make([]Estimator, 0, len(m.Lines))
+	done := make(map[engine.Set]bool)
 	for _, line := range m.Lines {
-		if !m.Design.IsRandom(line.Set) || only != nil && !slices.Contains(only, line.Set) {
+		if done[line.Set] || !m.Design.IsRandom(line.Set) || only != nil && !slices.Contains(only, line.Set) {
 			continue
 		}
-		g := grouped[line.Set]
-		if g == nil {
-			g = &Group{Sets: []engine.Set{line.Set}, Shares: []engine.Rational{engine.Whole(1)}}
+		g := group(line.Set)
+		for _, s := range g.Sets[1:] {
+			done[s] = true
 		}
-		if !done[g] {
-			done[g] = true
-			estimators = append(estimators, m.estimator(solver, g))
-		}
+		estimators = append(estimators, m.estimator(solver, g))
 	}
 	return estimators
 }
@@ -79,7 +78,7 @@ func (m *Model) estimator(solver *Solver, g *Group) Estimator {
 		e.Sets = append(e.Sets, u.Set)
 		e.Shares = append(e.Shares, u.Weight.Mul(engine.Whole(m.Design.Behind(u.Set))).Quo(behind))
 	}
-	e.Weights = append(e.Weights, Weight{lead, engine.Whole(1).Quo(behind)})
+	e.Weights = append(make([]Weight, 0, 1+len(solution)), Weight{lead, engine.Whole(1).Quo(behind)})
 	for _, w := range solution {
 		e.Weights = append(e.Weights, Weight{w.Set, w.Weight.Neg().Quo(behind)})
 	}

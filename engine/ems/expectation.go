@@ -31,7 +31,7 @@ func (m *Model) Coefficient(s, t engine.Set) engine.Rational {
 // Expectation returns the components of E[MS_S], the residual's first and then in the reverse of the contract's order, so
 // that the term's own is last.
 func (m *Model) Expectation(s engine.Set) []Component {
-	var components []Component
+	components := make([]Component, 0, 8)
 	add := func(t engine.Set) {
 		if q := m.Coefficient(s, t); q.Sign() != 0 {
 			components = append(components, Component{t, q})
