@@ -5,11 +5,15 @@ import (
 	"encoding/json"
 	"errors"
 	"fmt"
+	"math"
 	"mime/multipart"
 	"net/http"
 	"net/textproto"
 	"os"
+	"regexp"
+	"runtime"
 	"slices"
+	"strconv"
 	"strings"
 	"testing"
 	"unicode/utf8"
@@ -190,7 +194,7 @@ func compareExamples(t *testing.T, answers map[string][]byte) {
 	contract := string(api.OpenAPI)
 	from := strings.Index(contract, madeAnswers) + len(madeAnswers)
 	to := from + strings.Index(contract[from:], endAnswers)
-	if contract[from:to] == made.String() {
+	if contract[from:to] == made.String() || runtime.GOARCH != "amd64" && !*update && sameButRounding(contract[from:to], made.String()) {
 		return
 	}
 	if !*update {
@@ -200,6 +204,43 @@ func compareExamples(t *testing.T, answers map[string][]byte) {
 		t.Fatal(err)
 	}
 	t.Skip("written; run the test again")
+}
+
+var numeral = regexp.MustCompile(`-?[0-9]+(\.[0-9]+)?(e[-+]?[0-9]+)?`)
+
+// sameButRounding reports whether two texts differ in the white space and in the last digits of numbers only: the answers in
+// the contract were computed on amd64, and other processors fuse multiplications with additions.
+func sameButRounding(a, b string) bool {
+	blank := func(text string) string { return strings.Join(strings.Fields(numeral.ReplaceAllString(text, "0")), "") }
+	x, y := numeral.FindAllString(a, -1), numeral.FindAllString(b, -1)
+	if blank(a) != blank(b) || len(x) != len(y) {
+		return false
+	}
+	for i := range x {
+		p, errP := strconv.ParseFloat(x[i], 64)
+		q, errQ := strconv.ParseFloat(y[i], 64)
+		// 1e-9: a million times the error of the sums and tails of so small a study (goals, rows 12 and 17).
+		if errP != nil || errQ != nil || math.Abs(p-q) > 1e-9*math.Abs(p) {
+			return false
+		}
+	}
+	return true
+}
+
+func TestSameButRounding(t *testing.T) {
+	for _, c := range []struct {
+		a, b string
+		same bool
+	}{
+		{`{"p": 0.0614214466037}`, `{"p":  0.06142144660371}`, true},
+		{`{"p": 0.0614214466037}`, `{"p": 0.0614214567}`, false},
+		{`{"p": 1, "q": 2}`, `{"p": 1}`, false},
+		{`"p": 1e-9`, `"p": 1e-8`, false},
+	} {
+		if sameButRounding(c.a, c.b) != c.same {
+			t.Errorf("%s and %s: same is %v", c.a, c.b, !c.same)
+		}
+	}
 }
 
 func firstDifference(a, b string) string {

@@ -1,11 +1,14 @@
 package service
 
 import (
+	"bytes"
 	"encoding/json"
 	"net/http"
 	"regexp"
 	"strings"
 	"testing"
+
+	"go.yaml.in/yaml/v4"
 
 	"guardrow/api"
 )
@@ -136,10 +139,21 @@ func TestContractIsServed(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
+	// Both, as an independent reader has them (yaml.Unmarshal into Go values, and back).
+	var plain any
+	if err := yaml.Unmarshal(api.OpenAPI, &plain); err != nil {
+		t.Fatal(err)
+	}
+	if toJSON(t, plain) != toJSON(t, want) {
+		t.Error("the contract in JSON differs from the one in YAML")
+	}
 	var got document
 	decodeInto(t, asJSON.body, &got)
 	if toJSON(t, got) != toJSON(t, want) {
-		t.Error("the contract in JSON differs from the one in YAML")
+		t.Error("the contract that is served as JSON is another one than is held to")
+	}
+	if first, second := bytes.Index(asJSON.body, []byte(`"/v1/terms"`)), bytes.Index(asJSON.body, []byte(`"/v1/anova"`)); first < 0 || second < first {
+		t.Error("the contract in JSON is not in the order in which it was written")
 	}
 	if string(again)+"\n" != string(asJSON.body) {
 		t.Error("the contract in JSON is another one each time it is made")

@@ -108,6 +108,14 @@ func (s *Service) recovered(next echo.HandlerFunc, x *exchange) (err error) {
 
 // fail answers a request that failed. A client that went away gets nothing.
 func (s *Service) fail(x *exchange, err error) {
+	if x.Response().Committed {
+		// Half an answer must not pass for one: the connection ends. Mostly it has ended already, and that is the error.
+		x.Status, x.Err = clientGone, err
+		if x.Stack != nil {
+			x.Code = api.InternalError
+		}
+		return
+	}
 	r := s.refusalOf(x, err)
 	// A body that stops coming ends the request's context too; that caller may still be there to read why.
 	if x.Request().Context().Err() != nil && !s.stopped() && !r.close {
@@ -117,11 +125,6 @@ func (s *Service) fail(x *exchange, err error) {
 	x.Code = r.code()
 	if r.status() >= http.StatusInternalServerError || r.cause != nil {
 		x.Err = r
-	}
-	if x.Response().Committed {
-		// Too late for another answer: end the connection rather than let half an answer pass for one.
-		x.Status, x.Err = clientGone, err
-		return
 	}
 	s.sendProblem(x, r)
 }

@@ -6,8 +6,10 @@ import (
 	"encoding/json"
 	"math"
 	"net/http"
+	"net/http/httptest"
 	"strings"
 	"sync"
+	"syscall"
 	"testing"
 	"time"
 
@@ -172,4 +174,27 @@ func TestClientGone(t *testing.T) {
 	if len(s.service.workers.room) != 0 {
 		t.Error("its room to work is still taken")
 	}
+}
+
+// brokenPipe is a connection that ends as soon as something is written.
+type brokenPipe struct{ sink }
+
+func (b *brokenPipe) Write([]byte) (int, error) { return 0, syscall.EPIPE }
+
+// TestHalfAnAnswer holds an answer that cannot be written to its end to an ended connection, and to no defect in the log.
+func TestHalfAnAnswer(t *testing.T) {
+	core, lines := observer.New(zapcore.DebugLevel)
+	service := build(t, func(o *Options) { o.Logger = zap.New(core) })
+	defer func() {
+		if cause := recover(); cause != any(http.ErrAbortHandler) {
+			t.Errorf("the connection goes on: %v", cause)
+		}
+		entries := lines.All()
+		if len(entries) != 1 || entries[0].Level != zapcore.InfoLevel || entries[0].ContextMap()["status"] != int64(clientGone) {
+			t.Errorf("the log says %v", entries)
+		}
+	}()
+	r := httptest.NewRequestWithContext(context.Background(), http.MethodPost, "/v1/terms", strings.NewReader(oneKilobyte))
+	r.Header.Set("Content-Type", jsonType)
+	service.ServeHTTP(&brokenPipe{sink{header: make(http.Header)}}, r)
 }

@@ -6,6 +6,7 @@ import (
 	"slices"
 	"strings"
 
+	"github.com/go-json-experiment/json/jsontext"
 	"go.yaml.in/yaml/v4"
 )
 
@@ -62,22 +63,64 @@ func (r *rule) find(name string) int {
 // document is the contract as JSON values, as they come out of its YAML.
 type document map[string]any
 
-// loadDocument reads the contract's YAML. The second result is the same as JSON, with the names of every object sorted.
+// loadDocument reads the contract's YAML. The second result is the same as JSON, every name at its place, so that a reader of
+// either meets things in the order in which they were written.
 func loadDocument(text []byte) (document, []byte, error) {
-	var doc document
-	if err := yaml.Unmarshal(text, &doc); err != nil {
+	var root yaml.Node
+	if err := yaml.Unmarshal(text, &root); err != nil {
 		return nil, nil, fmt.Errorf("the contract is not YAML: %w", err)
 	}
-	asJSON, err := json.Marshal(doc)
+	asJSON, err := appendNode(nil, &root)
 	if err != nil {
 		return nil, nil, fmt.Errorf("the contract has no form in JSON: %w", err)
 	}
-	// Once more, so that every value is of one of JSON's Go types.
-	doc = nil
+	var doc document
 	if err := json.Unmarshal(asJSON, &doc); err != nil {
-		return nil, nil, err
+		return nil, nil, fmt.Errorf("the contract has no form in JSON: %w", err)
 	}
 	return doc, asJSON, nil
+}
+
+// appendNode appends a YAML value as JSON.
+func appendNode(text []byte, node *yaml.Node) ([]byte, error) {
+	var err error
+	switch node.Kind {
+	case yaml.DocumentNode:
+		return appendNode(text, node.Content[0])
+	case yaml.SequenceNode:
+		text = append(text, '[')
+		for i, item := range node.Content {
+			if i > 0 {
+				text = append(text, ',')
+			}
+			if text, err = appendNode(text, item); err != nil {
+				return nil, err
+			}
+		}
+		return append(text, ']'), nil
+	case yaml.MappingNode:
+		text = append(text, '{')
+		for i := 0; i < len(node.Content); i += 2 {
+			if i > 0 {
+				text = append(text, ',')
+			}
+			if text, err = jsontext.AppendQuote(text, node.Content[i].Value); err != nil {
+				return nil, err
+			}
+			if text, err = appendNode(append(text, ':'), node.Content[i+1]); err != nil {
+				return nil, err
+			}
+		}
+		return append(text, '}'), nil
+	case yaml.ScalarNode:
+		var value any
+		if err = node.Decode(&value); err != nil {
+			return nil, err
+		}
+		scalar, err := json.Marshal(value)
+		return append(text, scalar...), err
+	}
+	return nil, fmt.Errorf("line %d: a kind of YAML that JSON has not", node.Line)
 }
 
 // compiler turns the contract's schemas into shapes, each once.
