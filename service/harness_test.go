@@ -156,7 +156,11 @@ var theContract = sync.OnceValues(func() (*openapi3.T, error) {
 			return string(text), err
 		})
 	}
-	return openapi3.NewLoader().LoadFromData(api.OpenAPI)
+	doc, err := openapi3.NewLoader().LoadFromData(api.OpenAPI)
+	if err == nil {
+		doc.Servers = nil // the tests' listeners have addresses of their own
+	}
+	return doc, err
 })
 
 var theRoutes = sync.OnceValues(func() (routers.Router, error) {
