@@ -62,7 +62,7 @@ func check(envelope []byte, s *shape, elsewhere []string, others []api.ProblemEr
 		count:   len(others),
 	}
 	if err := c.object(s[objectKind], elsewhere); err != nil {
-		return nil, refuse(api.NotJSON, "", "The body is not JSON: "+err.Error()+".")
+		return nil, refuse(api.NotJSON, "", "The body is not JSON.")
 	}
 	if c.count > 0 {
 		return nil, refuseAll(c.faults, c.count)

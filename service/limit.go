@@ -142,13 +142,11 @@ var (
 	errStopping  = errors.New("the service is stopping")
 )
 
-// workContext returns a context for one answer, which ends at the time limit and when the service stops.
-func (s *Service) workContext(parent context.Context) (context.Context, func()) {
+// untilStop returns a context that ends with its parent, and when the service stops.
+func (s *Service) untilStop(parent context.Context) (context.Context, func()) {
 	ctx, cancel := context.WithCancelCause(parent)
-	limit := time.AfterFunc(s.options.WorkTime, func() { cancel(errTimeLimit) })
 	unhook := context.AfterFunc(s.stopping, func() { cancel(errStopping) })
 	return ctx, func() {
-		limit.Stop()
 		unhook()
 		cancel(nil)
 	}

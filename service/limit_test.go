@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"io"
 	"net/http"
+	"strconv"
 	"strings"
 	"testing"
 	"time"
@@ -15,6 +16,7 @@ import (
 	"guardrow/api"
 	"guardrow/engine"
 	"guardrow/engine/answer"
+	"guardrow/engine/data"
 )
 
 // TestBodyLimit sends bodies at the limit and past it, of announced and of unknown length.
@@ -221,9 +223,20 @@ func TestOptions(t *testing.T) {
 	if d.MaxBody != 64<<20 || d.MaxEnvelope != 1<<20 || d.MaxBuffered != 256<<20 || d.MaxRows != 2_000_000 || d.BodyTime != time.Minute || d.WorkTime != 30*time.Second || d.QueueTime != 10*time.Second || d.MaxWorkers < 2 {
 		t.Errorf("the defaults are not those that the comments state: %+v", d)
 	}
-	for _, stated := range []string{"64 MiB", "1 MiB", "2,000,000 rows"} {
-		if !bytes.Contains(api.OpenAPI, []byte(stated)) {
-			t.Errorf("the contract does not state the default of %s", stated)
+	thousands := func(n int) string {
+		text := strconv.Itoa(n)
+		for i := len(text) - 3; i > 0; i -= 3 {
+			text = text[:i] + "," + text[i:]
+		}
+		return text
+	}
+	for _, stated := range []string{
+		"64 MiB", "1 MiB", "2,000,000 rows", fmt.Sprintf("at most %d factors", engine.MaxFactors), fmt.Sprintf("at most %d characters", engine.MaxName),
+		thousands(answer.MaxTerms) + " terms", thousands(answer.MaxComponents) + " components", thousands(answer.MaxAnalysed), fmt.Sprintf("more than %d terms", answer.MaxPooledList),
+		fmt.Sprintf("at most %d deep", data.MaxDepth), fmt.Sprintf("at most %d errors", maxErrors),
+	} {
+		if !bytes.Contains(bytes.Join(bytes.Fields(api.OpenAPI), []byte(" ")), []byte(stated)) {
+			t.Errorf("the contract does not state the bound of %s", stated)
 		}
 	}
 }

@@ -144,12 +144,14 @@ func (s *Service) post(x *exchange, o *operation) error {
 	if err != nil {
 		return err
 	}
-	ctx, done := s.workContext(x.Request().Context())
+	ctx, done := s.untilStop(x.Request().Context())
 	defer done()
 	if err := s.workers.enter(ctx); err != nil {
 		return ended(ctx, err)
 	}
 	defer s.workers.leave()
+	ctx, limit := context.WithTimeoutCause(ctx, s.options.WorkTime, errTimeLimit)
+	defer limit()
 	return s.work(ctx, x, o, r)
 }
 
