@@ -200,7 +200,7 @@ func (d *Design) listTerms() {
 	}
 	for i, e := range found {
 		d.terms = append(d.terms, e.set)
-		d.index[e.set] = int32(i) //nolint:gosec // at most 2^16 terms
+		d.index[e.set] = int32(i)
 	}
 	d.terms = append(d.terms, d.Residual())
 }

@@ -117,17 +117,17 @@ func (in *intake) Read(p []byte) (int, error) {
 		}
 		return n, err
 	case errors.Is(err, os.ErrDeadlineExceeded):
-		r := refuse(api.BodyTooSlow, "", fmt.Sprintf("The body did not arrive within %v. Send it again.", in.service.options.BodyTime)).because(err)
+		r := refuse(api.BodyTooSlow, fmt.Sprintf("The body did not arrive within %v. Send it again.", in.service.options.BodyTime)).because(err)
 		r.close = true
 		return n, r
 	}
-	r := refuse(api.IncompleteBody, "", "The body ended before its announced length. Send it again.").because(err)
+	r := refuse(api.IncompleteBody, "The body ended before its announced length. Send it again.").because(err)
 	r.close = true
 	return n, r
 }
 
 func (in *intake) tooLarge() error {
-	r := refuse(api.BodyTooLarge, "", fmt.Sprintf("The body is larger than %d bytes, which is the most that this service takes. Send fewer responses at a time.", in.service.options.MaxBody))
+	r := refuse(api.BodyTooLarge, fmt.Sprintf("The body is larger than %d bytes, which is the most that this service takes. Send fewer responses at a time.", in.service.options.MaxBody))
 	r.close = true
 	return r
 }

@@ -9,9 +9,9 @@ import (
 	"strconv"
 	"unicode/utf8"
 
-	"github.com/go-json-experiment/json/jsontext"
-
 	"guardrow/api"
+
+	"github.com/go-json-experiment/json/jsontext"
 )
 
 // maxErrors is the largest number of errors that a problem lists.
@@ -62,7 +62,7 @@ func check(envelope []byte, s *shape, elsewhere []string, others []api.ProblemEr
 		count:   len(others),
 	}
 	if err := c.object(s[objectKind], elsewhere); err != nil {
-		return nil, refuse(api.NotJSON, "", "The body is not JSON.")
+		return nil, refuse(api.NotJSON, "The body is not JSON.")
 	}
 	if c.count > 0 {
 		return nil, refuseAll(c.faults, c.count)

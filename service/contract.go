@@ -12,9 +12,9 @@ import (
 	"strings"
 	"time"
 
-	"github.com/swaggest/swgui/v5emb"
-
 	"guardrow/api"
+
+	"github.com/swaggest/swgui/v5emb"
 )
 
 // contract serves the contract itself, the page to read it, and the catalogue of problems. All of it is made once.
@@ -104,7 +104,7 @@ func (c *contract) serve(x *exchange, media string, t text) error {
 func (c *contract) asset(x *exchange) error {
 	name := x.Param("asset")
 	if !pageFiles[name] {
-		return refuse(api.NotFound, "", "The page has no file of this name.")
+		return refuse(api.NotFound, "The page has no file of this name.")
 	}
 	x.Request().Header.Del("Range")
 	c.assets.ServeHTTP(x.Response(), x.Request())
@@ -127,7 +127,7 @@ func (c *contract) problems(x *exchange) error {
 func (c *contract) problem(x *exchange) error {
 	kind, ok := c.kinds[x.Param("kind")]
 	if !ok {
-		return refuse(api.NotFound, "", "There is no kind of problem of this name. GET /v1/problems lists all kinds.")
+		return refuse(api.NotFound, "There is no kind of problem of this name. GET /v1/problems lists all kinds.")
 	}
 	return send(x, http.StatusOK, jsonType, kind)
 }

@@ -6,11 +6,11 @@ import (
 	"mime/multipart"
 	"strings"
 
-	"github.com/go-json-experiment/json/jsontext"
-
 	"guardrow/api"
 	"guardrow/engine/answer"
 	"guardrow/engine/data"
+
+	"github.com/go-json-experiment/json/jsontext"
 )
 
 // maxParts is the largest number of parts of a form: more than there are fields, so that all superfluous ones are named.
@@ -34,7 +34,7 @@ func (o *operation) splitForm(in *intake, boundary string, maxEnvelope int) (*re
 	reader := multipart.NewReader(in, boundary)
 	for n := 0; ; n++ {
 		part, err := reader.NextPart()
-		if err == io.EOF { //nolint:errorlint // the end of the form; one that ends before its end wraps it
+		if err == io.EOF {
 			break
 		}
 		if err != nil {
@@ -111,4 +111,4 @@ func brokenForm(err error) error {
 	return invalidForm("The form is not multipart/form-data as RFC 7578 has it, or it is cut short. Let your HTTP library write it.")
 }
 
-func invalidForm(detail string) *refusal { return refuse(api.InvalidForm, "", detail) }
+func invalidForm(detail string) *refusal { return refuse(api.InvalidForm, detail) }

@@ -35,7 +35,7 @@ func TestForm(t *testing.T) {
 		{"an empty file", cutForm, formOf("design", design, "data", ""), 422, "/data "},
 		{"a file twice", cutForm, formOf("design", design, "data", rackCSV, "data", rackCSV), 400, "/data duplicate_key"},
 		{"a part twice", cutForm, formOf("design", design, "design", design, "data", rackCSV), 400, "/design duplicate_key"},
-		{"an unknown part", cutForm, formOf("design", design, "data", rackCSV, "respones", `["y"]`, "csv", `""`), 400, "/csv unknown_field /respones unknown_field"},
+		{"an unknown part", cutForm, formOf("design", design, "data", rackCSV, "reponses", `["y"]`, "csv", `""`), 400, "/csv unknown_field /reponses unknown_field"},
 		{"a part that is no JSON", cutForm, formOf("design", design, "data", rackCSV, "id", "study 7", "only", ""), 400, "/id not_json /only empty_body"},
 		{"a design that is no JSON, and another fault", cutForm, formOf("design", `{"factors": [`, "data", rackCSV, "confidence", `"0.9"`), 400, "/confidence wrong_type /design not_json"},
 		{"a faulty design and faulty readings", cutForm, formOf("design", `{"factors": [{"name": "rack", "levels": 0, "effect": "fixed"}]}`, "data", "rack,y\n1,NA\n2,3\n"), 422, "/data non_numeric_reading /design/factors/0/levels invalid_levels"},

@@ -14,14 +14,14 @@ import (
 	"sync"
 	"testing"
 
+	"guardrow/api"
+
 	"github.com/getkin/kin-openapi/openapi3"
 	"github.com/getkin/kin-openapi/openapi3filter"
 	"github.com/getkin/kin-openapi/routers"
 	"github.com/getkin/kin-openapi/routers/legacy"
 	"go.uber.org/goleak"
 	"go.uber.org/zap"
-
-	"guardrow/api"
 )
 
 var update = flag.Bool("update", false, "write the answers among the contract's examples")

@@ -8,9 +8,9 @@ import (
 	"strings"
 	"testing"
 
-	"go.yaml.in/yaml/v4"
-
 	"guardrow/api"
+
+	"go.yaml.in/yaml/v4"
 )
 
 func decodeInto(t testing.TB, text []byte, into any) {

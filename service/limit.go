@@ -44,7 +44,7 @@ func (w *workers) enter(ctx context.Context) error {
 func (w *workers) leave() { <-w.room }
 
 func overloaded() *refusal {
-	r := refuse(api.Overloaded, "", "The service has more to do than it has room for. Try again in a few seconds.")
+	r := refuse(api.Overloaded, "The service has more to do than it has room for. Try again in a few seconds.")
 	r.after = 5 * time.Second
 	return r
 }
@@ -101,7 +101,7 @@ func (r *rates) admit(address string) error {
 		due = now
 	}
 	if ahead := due.Sub(now) - r.slack; ahead > 0 {
-		refused := refuse(api.TooManyRequests, "", "More requests came from this address than the operator allows. Wait as many seconds as the header Retry-After says.")
+		refused := refuse(api.TooManyRequests, "More requests came from this address than the operator allows. Wait as many seconds as the header Retry-After says.")
 		refused.after = ahead
 		return refused
 	}
@@ -157,7 +157,7 @@ func ended(ctx context.Context, err error) error {
 	cause := context.Cause(ctx)
 	switch {
 	case errors.Is(cause, errTimeLimit):
-		r := refuse(api.TimeLimit, "", "The answer was not ready at the time limit. Ask for fewer lines with \"only\", or send fewer responses or rows at a time.")
+		r := refuse(api.TimeLimit, "The answer was not ready at the time limit. Ask for fewer lines with \"only\", or send fewer responses or rows at a time.")
 		r.after = time.Minute
 		return r.because(cause)
 	case errors.Is(cause, errStopping):
@@ -167,7 +167,7 @@ func ended(ctx context.Context, err error) error {
 }
 
 func shuttingDown() *refusal {
-	r := refuse(api.ShuttingDown, "", "The service is shutting down. Try again in a few seconds; another one will answer.")
+	r := refuse(api.ShuttingDown, "The service is shutting down. Try again in a few seconds; another one will answer.")
 	r.after = 5 * time.Second
 	return r
 }

@@ -11,12 +11,12 @@ import (
 	"testing"
 	"time"
 
-	"go.uber.org/zap"
-
 	"guardrow/api"
 	"guardrow/engine"
 	"guardrow/engine/answer"
 	"guardrow/engine/data"
+
+	"go.uber.org/zap"
 )
 
 // TestBodyLimit sends bodies at the limit and past it, of announced and of unknown length.

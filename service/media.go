@@ -19,7 +19,7 @@ const (
 func mediaType(header http.Header, form bool) (media, boundary string, err error) {
 	for _, encoding := range header.Values("Content-Encoding") {
 		if encoding != "" && !strings.EqualFold(encoding, "identity") {
-			return "", "", refuse(api.UnsupportedEncoding, "", "The body is compressed, which this service does not take. Send it as it is, without a Content-Encoding.")
+			return "", "", refuse(api.UnsupportedEncoding, "The body is compressed, which this service does not take. Send it as it is, without a Content-Encoding.")
 		}
 	}
 	given := header.Get("Content-Type")
@@ -45,7 +45,7 @@ func mediaType(header http.Header, form bool) (media, boundary string, err error
 	case given != "":
 		reason = "The body's media type is not one that this operation takes"
 	}
-	return "", "", refuse(api.UnsupportedMediaType, "", reason+". Send "+wanted+" in the header Content-Type.")
+	return "", "", refuse(api.UnsupportedMediaType, reason+". Send "+wanted+" in the header Content-Type.")
 }
 
 // acceptsJSON reports whether the header Accept admits JSON (RFC 9110, section 12.5.1): the most specific range that covers

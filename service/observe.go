@@ -10,10 +10,10 @@ import (
 	"runtime/debug"
 	"time"
 
+	"guardrow/api"
+
 	"github.com/labstack/echo/v4"
 	"go.uber.org/zap"
-
-	"guardrow/api"
 )
 
 // Observation is what is known of a request once it is answered. It holds nothing of what the caller sent but sizes and the
@@ -137,11 +137,11 @@ func (s *Service) refusalOf(x *exchange, err error) *refusal {
 	case errors.As(err, &r):
 		return r
 	case errors.As(err, &h) && h.Code == http.StatusNotFound:
-		return refuse(api.NotFound, "", "There is nothing at this path. The contract at /v1/openapi.yaml lists every path.")
+		return refuse(api.NotFound, "There is nothing at this path. The contract at /v1/openapi.yaml lists every path.")
 	case errors.As(err, &h) && h.Code == http.StatusMethodNotAllowed:
-		return refuse(api.MethodNotAllowed, "", "This path is not there for the method "+shortMethod(x.Method)+"; it is there for "+x.Response().Header().Get(echo.HeaderAllow)+".")
+		return refuse(api.MethodNotAllowed, "This path is not there for the method "+shortMethod(x.Method)+"; it is there for "+x.Response().Header().Get(echo.HeaderAllow)+".")
 	}
-	return refuse(api.InternalError, "", "The service has a defect, which is now in its log. Report it with the request's name, which is in the header X-Request-Id.").because(err)
+	return refuse(api.InternalError, "The service has a defect, which is now in its log. Report it with the request's name, which is in the header X-Request-Id.").because(err)
 }
 
 func shortMethod(method string) string {
@@ -173,7 +173,7 @@ const hexDigits = "0123456789abcdef"
 // newRequestID returns 64 random bits in hexadecimal. They tell requests apart in a log and guard nothing.
 func newRequestID() string {
 	var id [16]byte
-	bits := rand.Uint64() //nolint:gosec // not a secret
+	bits := rand.Uint64() //nolint:gosec // it guards nothing
 	for i := range id {
 		id[i] = hexDigits[bits&15]
 		bits >>= 4

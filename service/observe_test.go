@@ -13,13 +13,13 @@ import (
 	"testing"
 	"time"
 
-	"go.uber.org/zap"
-	"go.uber.org/zap/zapcore"
-	"go.uber.org/zap/zaptest/observer"
-
 	"guardrow/api"
 	"guardrow/engine"
 	"guardrow/engine/answer"
+
+	"go.uber.org/zap"
+	"go.uber.org/zap/zapcore"
+	"go.uber.org/zap/zaptest/observer"
 )
 
 // TestLog holds the log to one line a request, with what it must hold and nothing of what callers sent.

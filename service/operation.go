@@ -6,13 +6,13 @@ import (
 	"fmt"
 	"net/http"
 
-	"github.com/go-json-experiment/json"
-	"github.com/go-json-experiment/json/jsontext"
-
 	"guardrow/api"
 	"guardrow/engine"
 	"guardrow/engine/answer"
 	"guardrow/engine/data"
+
+	"github.com/go-json-experiment/json"
+	"github.com/go-json-experiment/json/jsontext"
 )
 
 // operation is an endpoint that computes.
@@ -136,7 +136,7 @@ func (s *Service) post(x *exchange, o *operation) error {
 		return shuttingDown()
 	}
 	if !acceptsJSON(x.Request().Header) {
-		return refuse(api.NotAcceptable, "", "The header Accept admits no media type of this operation's answers. Send application/json in it, or leave it out.")
+		return refuse(api.NotAcceptable, "The header Accept admits no media type of this operation's answers. Send application/json in it, or leave it out.")
 	}
 	in := s.intake(x)
 	defer in.close()
@@ -201,6 +201,6 @@ func (s *Service) work(ctx context.Context, x *exchange, o *operation, r *reques
 
 // head returns what stands at the head of the answer.
 func (s *Service) head(r *request) (api.Envelope, error) {
-	print, err := fingerprint(r.bare)
-	return api.Envelope{ID: r.id, Fingerprint: print, Engine: s.options.Version}, err
+	digest, err := fingerprint(r.bare)
+	return api.Envelope{ID: r.id, Fingerprint: digest, Engine: s.options.Version}, err
 }

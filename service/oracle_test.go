@@ -11,10 +11,10 @@ import (
 	"strings"
 	"testing"
 
+	"guardrow/api"
+
 	"github.com/santhosh-tekuri/jsonschema/v6"
 	"pgregory.net/rapid"
-
-	"guardrow/api"
 )
 
 // oracle compiles a schema of the contract with an independent validator of JSON Schema (santhosh-tekuri/jsonschema, draft 4,
@@ -145,7 +145,7 @@ func TestCheckAgreesWithAnOracle(t *testing.T) {
 	for _, o := range service.operations {
 		formal, whole := oracle(t, o.schema, false), oracle(t, o.schema, true)
 		rapid.Check(t, func(t *rapid.T) {
-			s := &scrawler{random: rand.New(rand.NewPCG(rapid.Uint64().Draw(t, "seed"), 0)), wrong: rapid.SampledFrom([]float64{0, 0.02, 0.1}).Draw(t, "wrong")} //nolint:gosec // a test
+			s := &scrawler{random: rand.New(rand.NewPCG(rapid.Uint64().Draw(t, "seed"), 0)), wrong: rapid.SampledFrom([]float64{0, 0.02, 0.1}).Draw(t, "wrong")}
 			s.object(o.shape[objectKind])
 			text := s.text.Bytes()
 			value, err := jsonschema.UnmarshalJSON(bytes.NewReader(text))

@@ -34,9 +34,9 @@ func (r *refusal) Unwrap() error { return r.cause }
 // code returns the first error's code, which tells the kind of problem.
 func (r *refusal) code() api.Code { return r.errors[0].Code }
 
-// refuse returns a refusal with one error.
-func refuse(code api.Code, pointer, detail string) *refusal {
-	return &refusal{errors: []api.ProblemError{{Pointer: pointer, Code: code, Detail: detail}}, count: 1}
+// refuse returns a refusal with one error, which is of the request as a whole.
+func refuse(code api.Code, detail string) *refusal {
+	return &refusal{errors: []api.ProblemError{{Code: code, Detail: detail}}, count: 1}
 }
 
 // because adds what is to be logged.

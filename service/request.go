@@ -129,7 +129,7 @@ func shifted(err error, offset int) error {
 }
 
 func envelopeTooLarge(most int) *refusal {
-	return refuse(api.EnvelopeTooLarge, "", fmt.Sprintf("What of the request is not readings is larger than %d bytes, which is the most that this service takes. Declare levels by their number instead of by labels.", most))
+	return refuse(api.EnvelopeTooLarge, fmt.Sprintf("What of the request is not readings is larger than %d bytes, which is the most that this service takes. Declare levels by their number instead of by labels.", most))
 }
 
 // syntax refuses a body that is not JSON.

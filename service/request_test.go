@@ -151,7 +151,7 @@ func TestWhatIsTaken(t *testing.T) {
 // and readings, whatever their place and form.
 func TestIDAndFingerprint(t *testing.T) {
 	s := start(t, nil)
-	print := func(path, body string) (id, fingerprint string) {
+	digest := func(path, body string) (id, fingerprint string) {
 		t.Helper()
 		answer := s.post(t, path, body)
 		var head struct {
@@ -166,7 +166,7 @@ func TestIDAndFingerprint(t *testing.T) {
 		}
 		return string(head.ID), head.Fingerprint
 	}
-	_, base := print("/v1/terms", `{"design":{"factors":[{"name":"rack","levels":2,"effect":"fixed"}]}}`)
+	_, base := digest("/v1/terms", `{"design":{"factors":[{"name":"rack","levels":2,"effect":"fixed"}]}}`)
 	// The canonical text by hand from RFC 8785, its sum from GNU coreutils:
 	// printf %s '{"design":{"factors":[{"effect":"fixed","levels":2,"name":"rack"}]}}' | sha256sum
 	if want := "6b61968eea5e1a54f7980bfe3a4da0cd0fd8a9b44e75225862011c1c50d6baee"; base != want {
@@ -179,12 +179,12 @@ func TestIDAndFingerprint(t *testing.T) {
 		{"/v1/anova", `{"data": {"rack": [1, 2], "y": [1, 2]}, "id": "", "design": ` + rackDesign("") + `}`, `""`},
 		{"/v1/anova", `{"design": ` + rackDesign("") + `, "csv": "rack,y\n1,1\n2,2\n"}`, ""},
 	} {
-		id, got := print(c.path, c.body)
+		id, got := digest(c.path, c.body)
 		if id != c.id || got != base {
 			t.Errorf("%s: id %s, fingerprint %s, want %s, %s", c.body, id, got, c.id, base)
 		}
 	}
-	if _, other := print("/v1/terms", `{"design":`+rackDesign(`, "replicates": 1`)+`}`); other == base {
+	if _, other := digest("/v1/terms", `{"design":`+rackDesign(`, "replicates": 1`)+`}`); other == base {
 		t.Error("another request has the same fingerprint")
 	}
 }

@@ -8,9 +8,9 @@ import (
 	"sync"
 	"sync/atomic"
 
-	"github.com/labstack/echo/v4"
-
 	"guardrow/api"
+
+	"github.com/labstack/echo/v4"
 )
 
 // Service answers requests over HTTP. It is an http.Handler, has no state but its limits, and is safe for concurrent use.

@@ -96,7 +96,7 @@ func reportRatio(b *testing.B, work, yardstick func()) {
 		ratios[i] = float64(time.Since(middle)) / float64(middle.Sub(start))
 	}
 	slices.Sort(ratios)
-	for b.Loop() { //nolint:revive // the rounds above are what is measured
+	for b.Loop() {
 	}
 	b.ReportMetric(ratios[len(ratios)/2], "ratio")
 	b.ReportMetric(0, "ns/op")

@@ -136,11 +136,12 @@ func (x *decimal) magnitude() int {
 	return n + x.e
 }
 
-// append appends x as ±digits and an exponent, the digits ending in one that is not 0: equal numbers have equal texts.
-func (x *decimal) append(text []byte) []byte {
+// text returns x as ±digits and an exponent, the digits ending in one that is not 0: equal numbers have equal texts.
+func (x *decimal) text() []byte {
 	if x.isZero() {
-		return append(text, '0')
+		return []byte{'0'}
 	}
+	var text []byte
 	if x.neg {
 		text = append(text, '-')
 	}
@@ -160,7 +161,7 @@ func (x *decimal) float() float64 {
 	if x.digits == nil {
 		return round128(x.neg, 0, x.m, -x.e)
 	}
-	f, _ := strconv.ParseFloat(string(x.append(nil)), 64) // beyond the range it is ±Inf, as wanted
+	f, _ := strconv.ParseFloat(string(x.text()), 64) // beyond the range it is ±Inf, as wanted
 	return f
 }
 

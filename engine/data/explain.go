@@ -199,7 +199,7 @@ func (e *explanation) key(s engine.Set, row int) (uint64, bool) {
 		if level == noLevel {
 			return 0, false
 		}
-		key = key*uint64(e.factors[p].Levels) + uint64(level) //nolint:gosec // below 2^53
+		key = key*uint64(e.factors[p].Levels) + uint64(level)
 	}
 	return key, true
 }
@@ -231,7 +231,7 @@ func (e *explanation) nested(f int) {
 		}
 		id, seen := n.ids[parent]
 		if !seen {
-			id = uint32(len(n.labels)) //nolint:gosec // at most the rows
+			id = uint32(len(n.labels))
 			n.ids[parent] = id
 			n.labels = append(n.labels, nil)
 			n.example = append(n.example, row)
@@ -240,7 +240,7 @@ func (e *explanation) nested(f int) {
 		pair := uint64(id)<<32 | uint64(label)
 		level, seen := found[pair]
 		if !seen {
-			level = uint32(len(n.labels[id])) //nolint:gosec // at most the rows
+			level = uint32(len(n.labels[id]))
 			found[pair] = level
 			n.labels[id] = append(n.labels[id], label)
 		}
@@ -260,9 +260,9 @@ func (e *explanation) uneven(f int, n *nest) bool {
 	for id, labels := range n.labels {
 		switch found := int64(len(labels)); {
 		case found > e.factors[f].Levels:
-			many = append(many, uint32(id)) //nolint:gosec // at most the rows
+			many = append(many, uint32(id))
 		case found < e.factors[f].Levels:
-			few = append(few, uint32(id)) //nolint:gosec // at most the rows
+			few = append(few, uint32(id))
 		}
 	}
 	if len(many) > 0 {

@@ -19,7 +19,7 @@ func Fingerprint(columns *Columns) string {
 	}
 	p := printer{hash: sha256.New()}
 	p.text("guardrow data 1")
-	p.number(uint64(columns.Rows)) //nolint:gosec // a count
+	p.number(uint64(columns.Rows))
 	p.number(uint64(len(columns.Factors)))
 	for i := range columns.Factors {
 		f := &columns.Factors[i]

@@ -45,7 +45,7 @@ func sameButForm(a, b string) bool {
 func sameNumber(a, b string) bool {
 	x, ok := parseDecimal([]byte(a))
 	y, also := parseDecimal([]byte(b))
-	return ok && also && string(x.append(nil)) == string(y.append(nil))
+	return ok && also && string(x.text()) == string(y.text())
 }
 
 // readable returns text as valid UTF-8, cut to more than a message shows.

@@ -94,7 +94,7 @@ func (s *jsonScan) anyColumn(name string, pos int) int {
 	}
 	if s.at(pos) != '[' {
 		if s.wants(api.NotAColumn, name) {
-			s.tell(api.NotAColumn, s.scan.column(name), "The column %s is not an array. Send one value per row, in square brackets.", engine.Quote(name))
+			s.tell(api.NotAColumn, s.column(name), "The column %s is not an array. Send one value per row, in square brackets.", engine.Quote(name))
 		}
 		return s.value(pos)
 	}

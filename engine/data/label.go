@@ -94,7 +94,7 @@ func (d *dictionary) entry(label []byte) uint32 {
 
 // next returns the entry for a label that is about to be added.
 func (d *dictionary) next(label []byte) uint32 {
-	entry := uint32(len(d.words)+1) << entryBits //nolint:gosec // rows, and so labels, are fewer than 2^30 − 1
+	entry := uint32(len(d.words)+1) << entryBits
 	if isShortestNumber(label) {
 		entry |= asNumber
 	}
@@ -151,7 +151,7 @@ type nearPlace struct {
 }
 
 func newNearTable(n int) nearTable {
-	return nearTable{places: make([]nearPlace, n), shift: 64 - bits.Len(uint(n-1))} //nolint:gosec // a power of two
+	return nearTable{places: make([]nearPlace, n), shift: 64 - bits.Len(uint(n-1))}
 }
 
 // nearHash mixes the bits of a key; its upper bits choose the place. Fibonacci hashing: Knuth, The Art of Computer

@@ -65,7 +65,7 @@ func (l *layout) strides(s engine.Set) []uint32 {
 	stride := int64(1)
 	for f := len(factors) - 1; f >= 0; f-- {
 		if s.Has(f) {
-			strides[f] = uint32(stride) //nolint:gosec // at most the rows
+			strides[f] = uint32(stride)
 			stride *= factors[f].Levels
 		}
 	}
@@ -109,7 +109,7 @@ const noLevel = math.MaxUint32
 func levelsOf(labels, listed []string) (levels []uint32, unknown bool) {
 	position := make(map[string]uint32, len(listed))
 	for i, label := range listed {
-		position[label] = uint32(i) //nolint:gosec // a list in a request
+		position[label] = uint32(i)
 	}
 	levels = make([]uint32, len(labels))
 	for i, label := range labels {
@@ -127,7 +127,7 @@ func renumber(column *LabelColumn, levels []uint32, listed []string) {
 	column.Labels = listed
 	same := true
 	for i, level := range levels {
-		same = same && level == uint32(i) //nolint:gosec // as many as labels
+		same = same && level == uint32(i)
 	}
 	if same {
 		return
@@ -164,9 +164,9 @@ func (l *layout) even() bool {
 	case replicates == 1:
 		return l.single(make([]uint64, cells/64+1))
 	case replicates <= math.MaxUint8:
-		return countUpTo(l, make([]uint8, cells), uint8(replicates)) //nolint:gosec // just checked
+		return countUpTo(l, make([]uint8, cells), uint8(replicates))
 	}
-	return countUpTo(l, make([]uint32, cells), uint32(replicates)) //nolint:gosec // at most the rows
+	return countUpTo(l, make([]uint32, cells), uint32(replicates))
 }
 
 // single reports whether no cell has two readings.

@@ -9,10 +9,10 @@ import (
 	"strings"
 	"testing"
 
-	"pgregory.net/rapid"
-
 	"guardrow/api"
 	"guardrow/engine"
+
+	"pgregory.net/rapid"
 )
 
 // table is a data set as a person has it: labels by row and factor.

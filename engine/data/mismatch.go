@@ -182,7 +182,7 @@ func are(n int64) string {
 // those few.
 func (e *explanation) short(runs []run) []run {
 	var found []run
-	cells, next := uint64(e.design.Cells()), 0 //nolint:gosec // below 2^53
+	cells, next := uint64(e.design.Cells()), 0
 	for cell := uint64(0); cell < cells && len(found) < maxExamples; cell++ {
 		r := run{cell: cell}
 		if next < len(runs) && runs[next].cell == cell {
@@ -201,7 +201,7 @@ func (e *explanation) short(runs []run) []run {
 func (e *explanation) cellLabels(cell uint64) string {
 	levels := make([]uint64, len(e.factors))
 	for f := len(e.factors) - 1; f >= 0; f-- {
-		n := uint64(e.factors[f].Levels) //nolint:gosec // at least 1
+		n := uint64(e.factors[f].Levels)
 		levels[f] = cell % n
 		cell /= n
 	}
@@ -228,7 +228,7 @@ func (e *explanation) levelLabel(f int, levels []uint64) (string, bool) {
 	}
 	key := uint64(0)
 	for _, p := range factor.Above.Members() {
-		key = key*uint64(e.factors[p].Levels) + levels[p] //nolint:gosec // below 2^53
+		key = key*uint64(e.factors[p].Levels) + levels[p]
 	}
 	id, seen := e.nests[f].ids[key]
 	if !seen {

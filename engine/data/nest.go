@@ -48,8 +48,8 @@ type levelFinder struct {
 }
 
 func newLevelFinder(parents, labels int, limit int64, rows int) *levelFinder {
-	l := &levelFinder{limit: uint32(min(limit, math.MaxUint32)), used: make([]uint32, parents), labels: labels} //nolint:gosec // at most the rows
-	if over, size := bits.Mul64(uint64(parents), uint64(labels)); over == 0 && size <= uint64(rows/4+1024) {    //nolint:gosec // counts
+	l := &levelFinder{limit: uint32(min(limit, math.MaxUint32)), used: make([]uint32, parents), labels: labels}
+	if over, size := bits.Mul64(uint64(parents), uint64(labels)); over == 0 && size <= uint64(rows/4+1024) {
 		l.levels = make([]uint32, size)
 		return l
 	}

@@ -200,7 +200,7 @@ func (s *scan) finish(c *readings) {
 	response := &s.columns.Responses[c.index]
 	response.Offsets = c.offsets
 	response.Shift = c.shift.first.float() + 0
-	response.exact = string(c.shift.first.append(nil))
+	response.exact = string(c.shift.first.text())
 }
 
 // noLabel reports a row without a label.

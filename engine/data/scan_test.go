@@ -14,10 +14,10 @@ import (
 	"strings"
 	"testing"
 
-	"pgregory.net/rapid"
-
 	"guardrow/api"
 	"guardrow/engine"
+
+	"pgregory.net/rapid"
 )
 
 func twoColumns() Plan {
@@ -534,13 +534,13 @@ func TestJSONAndCSVAgree(t *testing.T) {
 				}
 			}
 		}
-		print := Fingerprint(want)
+		digest := Fingerprint(want)
 		check := func(got *Columns, faults []engine.Fault, err error) {
 			if faults != nil || err != nil {
 				t.Fatal(faults, err)
 			}
-			if p := Fingerprint(got); p != print {
-				t.Fatalf("fingerprint %s, want %s", p, print)
+			if p := Fingerprint(got); p != digest {
+				t.Fatalf("fingerprint %s, want %s", p, digest)
 			}
 			got.place, got.pointers = want.place, want.pointers
 			if !reflect.DeepEqual(got, want) {

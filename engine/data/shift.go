@@ -80,7 +80,7 @@ func newStep(first *decimal, k int) step {
 	if first.neg {
 		signed = -signed
 	}
-	return step{limit: bound / times, times: int64(times), shift: signed, power: floatPowers[max(k, decimals)]} //nolint:gosec // times ≤ 10^18
+	return step{limit: bound / times, times: int64(times), shift: signed, power: floatPowers[max(k, decimals)]}
 }
 
 // quick returns the offset of ±m·10^-k, or false where only offset can tell.
@@ -88,7 +88,7 @@ func (s *step) quick(neg bool, m uint64) (float64, bool) {
 	if m >= s.limit {
 		return 0, false
 	}
-	d := int64(m) * s.times //nolint:gosec // below 2^62
+	d := int64(m) * s.times
 	if neg {
 		d = -d
 	}
@@ -264,7 +264,7 @@ func divide128(hi, lo, by uint64) float64 {
 	if rest != 0 {
 		low |= 1
 	}
-	return float64(low) * math.Float64frombits(uint64(1023-up)<<52) //nolint:gosec // times 2^-up, exactly: −64 ≤ up < 128
+	return float64(low) * math.Float64frombits(uint64(1023-up)<<52)
 }
 
 // roundText returns the double nearest to an integer's digits times 10^-k.

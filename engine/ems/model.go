@@ -45,7 +45,7 @@ func New(d *engine.Design) *Model {
 	for i, s := range terms {
 		m.line[i] = -1
 		if !d.Negligible(s) {
-			m.line[i] = int32(len(m.Lines)) //nolint:gosec // at most 2^16 terms
+			m.line[i] = int32(len(m.Lines))
 			df := d.DF(s)
 			m.Lines = append(m.Lines, Line{Set: s, Own: df, DF: df})
 		}

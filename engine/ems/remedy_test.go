@@ -128,10 +128,10 @@ func (s *subject) countZero(k int, terms []int, after *subject) {
 }
 
 // bySize returns all sets of up to three of n things, or of any number, as bits, smaller sets first.
-func bySize(n int, any bool) []uint32 {
+func bySize(n int, mixed bool) []uint32 {
 	var sets []uint32
 	for chosen := uint32(1); chosen < 1<<n; chosen++ {
-		if any || bits.OnesCount32(chosen) <= 3 {
+		if mixed || bits.OnesCount32(chosen) <= 3 {
 			sets = append(sets, chosen)
 		}
 	}

@@ -88,7 +88,7 @@ func (c *published) lay(t *testing.T, factors []string) *data.Grid {
 		cells *= len(f.Levels)
 		index := map[string]uint32{}
 		for i, label := range f.Levels {
-			index[label] = uint32(i) //nolint:gosec // few levels
+			index[label] = uint32(i)
 		}
 		codes = append(codes, index)
 	}

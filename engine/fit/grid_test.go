@@ -40,10 +40,10 @@ func emptyGrid(d *engine.Design) *data.Grid {
 		run /= int(f.Levels)
 		codes := make([]uint32, g.Rows)
 		for i := range codes {
-			codes[i] = uint32(i / run % int(f.Levels)) //nolint:gosec // below the levels
+			codes[i] = uint32(i / run % int(f.Levels))
 		}
 		g.Axes = append(g.Axes, narrow(codes, int(f.Levels)))
-		g.Strides = append(g.Strides, uint32(run/int(d.Replicates()))) //nolint:gosec // at most the cells
+		g.Strides = append(g.Strides, uint32(run/int(d.Replicates())))
 	}
 	return g
 }
@@ -62,7 +62,7 @@ func narrow(codes []uint32, levels int) data.Codes {
 func convert[T uint8 | uint16](codes []uint32) []T {
 	to := make([]T, len(codes))
 	for i, c := range codes {
-		to[i] = T(c) //nolint:gosec // the caller saw that it fits
+		to[i] = T(c)
 	}
 	return to
 }

@@ -87,12 +87,12 @@ func (s *short) scan(cells []cell, y *[rowBlock]float64, first int, squares pair
 		j, k, l := binary.LittleEndian.Uint64(a[i:i+8]), binary.LittleEndian.Uint64(b[i:i+8]), binary.LittleEndian.Uint64(c[i:i+8])
 		e := (j&even)*u + (k&even)*v + (l&even)*w          // rows 0, 2, 4, 6
 		f := (j>>8&even)*u + (k>>8&even)*v + (l>>8&even)*w // rows 1, 3, 5, 7
-		p += cells[uint16(e)].add(y[i])                    //nolint:gosec // the lowest lane
-		q += cells[uint16(f)].add(y[i+1])                  //nolint:gosec // the lowest lane
-		p += cells[uint16(e>>16)].add(y[i+2])              //nolint:gosec // one lane
-		q += cells[uint16(f>>16)].add(y[i+3])              //nolint:gosec // one lane
-		p += cells[uint16(e>>32)].add(y[i+4])              //nolint:gosec // one lane
-		q += cells[uint16(f>>32)].add(y[i+5])              //nolint:gosec // one lane
+		p += cells[uint16(e)].add(y[i])
+		q += cells[uint16(f)].add(y[i+1])
+		p += cells[uint16(e>>16)].add(y[i+2])
+		q += cells[uint16(f>>16)].add(y[i+3])
+		p += cells[uint16(e>>32)].add(y[i+4])
+		q += cells[uint16(f>>32)].add(y[i+5])
 		p += cells[e>>48].add(y[i+6])
 		q += cells[f>>48].add(y[i+7])
 		if i%plainTwo == plainTwo-8 {

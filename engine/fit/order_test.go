@@ -38,7 +38,7 @@ func TestCellOrder(t *testing.T) {
 			permute(g, order)
 		case 3:
 			a := rng.IntN(len(g.Axes))
-			g.Axes[a].U8[rng.IntN(g.Rows)] = uint8(rng.IntN(int(d.Factors()[a].Levels))) //nolint:gosec // few levels
+			g.Axes[a].U8[rng.IntN(g.Rows)] = uint8(rng.IntN(int(d.Factors()[a].Levels)))
 		}
 		want := true
 		for i := range g.Rows {
@@ -62,10 +62,23 @@ func TestWideCodes(t *testing.T) {
 		levels     []int
 		replicates int
 	}{
-		{[]int{256}, 9}, {[]int{257}, 9}, {[]int{70000}, 1}, {[]int{66000}, 2},
-		{[]int{3, 400}, 3}, {[]int{400, 3}, 3}, {[]int{256, 256}, 1}, {[]int{256, 257}, 1},
-		{[]int{200, 100, 5}, 1}, {[]int{30, 20, 10}, 3}, {[]int{9, 100, 90}, 2}, {[]int{256, 257}, 2}, {[]int{250, 251, 2}, 2},
-		{[]int{2, 3, 4, 5}, 10}, {[]int{2, 3, 300, 4}, 1}, {[]int{2, 3, 2, 3, 2, 3, 2}, 4}, {[]int{7}, 500},
+		{[]int{256}, 9},
+		{[]int{257}, 9},
+		{[]int{70000}, 1},
+		{[]int{66000}, 2},
+		{[]int{3, 400}, 3},
+		{[]int{400, 3}, 3},
+		{[]int{256, 256}, 1},
+		{[]int{256, 257}, 1},
+		{[]int{200, 100, 5}, 1},
+		{[]int{30, 20, 10}, 3},
+		{[]int{9, 100, 90}, 2},
+		{[]int{256, 257}, 2},
+		{[]int{250, 251, 2}, 2},
+		{[]int{2, 3, 4, 5}, 10},
+		{[]int{2, 3, 300, 4}, 1},
+		{[]int{2, 3, 2, 3, 2, 3, 2}, 4},
+		{[]int{7}, 500},
 	} {
 		t.Run(fmt.Sprint(c.levels, c.replicates), func(t *testing.T) {
 			g := emptyGrid(crossed(c.levels, c.replicates))

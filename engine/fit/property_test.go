@@ -110,7 +110,7 @@ func relabel(g *data.Grid, rng *rand.Rand) {
 			if renamed[parents] == nil {
 				renamed[parents] = rng.Perm(int(f.Levels))
 			}
-			codes[i] = uint32(renamed[parents][code(g, a, i)]) //nolint:gosec // below the levels
+			codes[i] = uint32(renamed[parents][code(g, a, i)])
 		}
 		names[a] = narrow(codes, int(f.Levels))
 	}

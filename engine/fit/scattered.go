@@ -44,7 +44,7 @@ func (k *Kernel) scatteredMeans(y []float64, origin float64) float64 {
 	var within float64
 	for pass := 1; pass <= 3; pass++ {
 		all := k.gather(y)
-		within = all - k.center(origin)
+		within = all - k.centre(origin)
 		if pass >= passes && within > all/16 {
 			break
 		}
@@ -126,9 +126,9 @@ func (k *Kernel) carryOver() {
 	}
 }
 
-// center fills k.means, as distances from the origin, makes the means just found the presumed ones, and returns
+// centre fills k.means, as distances from the origin, makes the means just found the presumed ones, and returns
 // Σ sum²/replicates.
-func (k *Kernel) center(origin float64) float64 {
+func (k *Kernel) centre(origin float64) float64 {
 	const stretch = 16
 	r := float64(k.replicates)
 	if k.replicates > longSum {
