@@ -30,7 +30,7 @@ func (t *tester) explain(test ems.Test) string {
 // null states the hypothesis that a test is about.
 func (t *tester) null(s engine.Set) string {
 	if t.design.IsRandom(s) {
-		return fmt.Sprintf("the levels of %s did not vary", t.name(s))
+		return fmt.Sprintf("%s added no variation of its own", t.name(s))
 	}
 	return fmt.Sprintf("%s had no effect", t.name(s))
 }
@@ -45,10 +45,10 @@ func (t *tester) approximate(test ems.Test) string {
 		if t.difference {
 			how = "That difference is the error here; it can come out negative, and its degrees of freedom, by Satterthwaite's formula, can fall towards 0"
 		} else {
-			how = "The part that is subtracted is added to the numerator instead, so that no mean square is negative, and both degrees of freedom follow from Satterthwaite's formula"
+			how = "The part that is subtracted is added to the numerator instead, so that no mean square is negative, and the degrees of freedom of both sides follow from Satterthwaite's formula"
 		}
 	}
-	return fmt.Sprintf("No single line estimates what the mean square of %s would be if %s; %s does. %s, so the test is approximate.", t.name(test.Set), t.null(test.Set), combination, how)
+	return fmt.Sprintf("%s has an approximate test. If %s, no single line would estimate the same quantity as its mean square, but %s would. %s.", t.name(test.Set), t.null(test.Set), combination, how)
 }
 
 // combination writes a weighted sum of mean squares, such as "MS(a) + 1/2 MS(b) − MS(c)".
