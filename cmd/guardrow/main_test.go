@@ -202,7 +202,9 @@ func TestStoppingFinishesWhatIsInFlight(t *testing.T) {
 	}
 	defer func() { _ = connection.Close() }()
 	body := `{"design": {"factors": [{"name": "rack", "levels": 2, "effect": "fixed"}]}}`
-	fmt.Fprintf(connection, "POST /v1/terms HTTP/1.1\r\nHost: guardrow\r\nContent-Type: application/json\r\nContent-Length: %d\r\nExpect: 100-continue\r\n\r\n", len(body))
+	if _, err := fmt.Fprintf(connection, "POST /v1/terms HTTP/1.1\r\nHost: guardrow\r\nContent-Type: application/json\r\nContent-Length: %d\r\nExpect: 100-continue\r\n\r\n", len(body)); err != nil {
+		t.Fatal(err)
+	}
 	reader := bufio.NewReader(connection)
 	if line, err := reader.ReadString('\n'); err != nil || !strings.Contains(line, "100 Continue") {
 		t.Fatal(line, err)
