@@ -32,12 +32,13 @@ func (p *Plan) components(ms []float64) []Component {
 	list := make([]Component, 0, len(p.estimators))
 	for _, e := range p.estimators {
 		c := Component{Estimator: e, Estimate: math.NaN(), Lower: math.NaN(), Upper: math.NaN()}
-		if n := len(e.Weights); n > 0 {
-			weight, x, df := make([]float64, n), make([]float64, n), make([]float64, n)
+		if len(e.Weights) > 0 {
+			var room [3][8]float64 // on the stack; nearly every combination fits
+			weight, x, df := room[0][:0], room[1][:0], room[2][:0]
 			c.Estimate = 0
 			for i, w := range e.Weights {
 				l := p.Model.Line(w.Set)
-				weight[i], x[i], df[i] = w.Weight.Float64(), ms[l], float64(p.Model.Lines[l].DF)
+				weight, x, df = append(weight, w.Weight.Float64()), append(x, ms[l]), append(df, float64(p.Model.Lines[l].DF))
 				c.Estimate += weight[i] * x[i]
 			}
 			c.interval(weight, x, df, p.Confidence)

@@ -139,15 +139,16 @@ type combination struct {
 
 func (p *Plan) side(weights []ems.Weight, ms []float64) combination {
 	var c combination
-	n := len(weights)
-	w, x, df := make([]float64, n), make([]float64, n), make([]float64, n)
-	for i, weight := range weights {
+	var room [3][8]float64 // on the stack; nearly every combination fits
+	w, x, df := room[0][:0], room[1][:0], room[2][:0]
+	for _, weight := range weights {
 		l := p.Model.Line(weight.Set)
-		w[i], x[i], df[i] = weight.Weight.Float64(), ms[l], float64(p.Model.Lines[l].DF)
-		if w[i] < 0 {
-			c.subtracted -= w[i] * x[i]
+		part := weight.Weight.Float64()
+		w, x, df = append(w, part), append(x, ms[l]), append(df, float64(p.Model.Lines[l].DF))
+		if part *= ms[l]; part < 0 {
+			c.subtracted -= part
 		} else {
-			c.added += w[i] * x[i]
+			c.added += part
 		}
 	}
 	c.value = c.added - c.subtracted
