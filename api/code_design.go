@@ -49,7 +49,7 @@ const (
 	NoSuchLine Code = "no_such_line"
 	// TooManyTerms: an answer lists at most 8,192 terms.
 	TooManyTerms Code = "too_many_terms"
-	// TooManyComponents: an answer holds at most 250,000 components or weights.
+	// TooManyComponents: an answer holds at most 250,000 components or weights, fewer where names are long.
 	TooManyComponents Code = "too_many_components"
 	// InvalidVariance: a variance is a finite number, at least 0, and above 0 for the residual.
 	InvalidVariance Code = "invalid_variance"
@@ -100,7 +100,7 @@ func designRules() []Entry {
 		{Code: NegligibleResidual, Rule: "The residual cannot be assumed null.", Example: terms(`{"factors": [{"name": "rack", "levels": 2, "effect": "fixed"}], "negligible": ["residual"]}`)},
 		{Code: NoSuchLine, Rule: "A line or a component that a request asks for exists once negligible terms are pooled; the residual has no test.", Example: Example{Path: "/v1/tests", Body: `{"design": {"factors": [{"name": "batch", "levels": 4, "effect": "random"}, {"name": "dose", "levels": 3, "effect": "fixed"}], "negligible": [["batch", "dose"]]}, "only": ["batch × dose"]}`}},
 		{Code: TooManyTerms, Rule: "An answer lists at most 8,192 terms; max_order or only make it shorter.", Example: terms(`{"factors": [` + random("ABCDEFGHIJKLMOPQ") + `]}`)},
-		{Code: TooManyComponents, Rule: "An answer holds at most 250,000 components or weights; max_order or only make it shorter.", Example: Example{Path: "/v1/expected-mean-squares", Body: `{"design": {"factors": [` + random("ABCDEFGHIJKLM") + `]}}`}},
+		{Code: TooManyComponents, Rule: "An answer holds at most 250,000 components or weights, fewer where names are long; max_order or only make it shorter.", Example: Example{Path: "/v1/expected-mean-squares", Body: `{"design": {"factors": [` + random("ABCDEFGHIJKLM") + `]}}`}},
 		{Code: InvalidVariance, Rule: "A variance is a finite number, at least 0, and above 0 for the residual.", Example: tests(`[{"term": "residual", "variance": 0}]`)},
 		{Code: RepeatedComponent, Rule: "Each component is given once.", Example: tests(`[{"term": "residual", "variance": 1}, {"term": "batch", "variance": 1}, {"term": ["batch"], "variance": 2}]`)},
 		{Code: ComponentOfFixed, Rule: "Only random terms have a variance.", Example: tests(`[{"term": "residual", "variance": 1}, {"term": "dose", "variance": 1}]`)},

@@ -43,8 +43,8 @@ func Anova(ctx context.Context, request *api.AnovaRequest, readings Readings) (*
 		return nil, stats, faults, err
 	}
 	stats = Stats{Terms: len(a.design.Terms()), Observations: int64(columns.Rows)}
-	if a.size*len(columns.Responses) > MaxAnalysed {
-		return nil, stats, []engine.Fault{{Code: api.TooManyComponents, Place: "responses", Detail: fmt.Sprintf("The analyses of %d responses hold more than %d components in all. Post fewer responses at a time, or name fewer lines in \"only\".", len(columns.Responses), MaxAnalysed)}}, nil
+	if limit := maxComponents(a.design) * (MaxAnalysed / MaxComponents); a.size*len(columns.Responses) > limit {
+		return nil, stats, []engine.Fault{{Code: api.TooManyComponents, Place: "responses", Detail: fmt.Sprintf("The analyses of %d responses hold more than %d components in all. Post fewer responses at a time, or name fewer lines in \"only\".", len(columns.Responses), limit)}}, nil
 	}
 	answer := &api.AnovaAnswer{
 		Title: a.design.Title(), Constraint: constraint(a.design), ApproximateForm: form(a.plan.Difference),

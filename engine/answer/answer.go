@@ -11,11 +11,26 @@ import (
 
 // Bounds of one answer. They are stated in the contract.
 const (
-	MaxTerms      = 8192    // terms listed
-	MaxComponents = 250000  // components in expectations, or weights in tests
-	MaxPooledList = 32      // terms above max_order named one by one in a pooled line
-	MaxAnalysed   = 1000000 // components in the lines of all analyses of one answer
+	MaxTerms      = 8192     // terms listed
+	MaxComponents = 250000   // components in expectations, or weights in tests
+	MaxNames      = 96 << 20 // bytes of names in components, where names are long
+	MaxPooledList = 32       // terms above max_order named one by one in a pooled line
+	MaxAnalysed   = 1000000  // components in the lines of all analyses of one answer
 )
+
+// maxComponents returns how many components an answer on the design may hold: each repeats names of factors, so it is fewer
+// where these are long.
+func maxComponents(d *engine.Design) int { return min(MaxComponents, MaxNames/nameBytes(d)) }
+
+// nameBytes returns about how many bytes a component takes in an answer at the most.
+func nameBytes(d *engine.Design) int {
+	const besides = 100
+	n := besides
+	for _, f := range d.Factors() {
+		n += len(f.Name)
+	}
+	return n
+}
 
 // namer names the terms of one design, each once.
 type namer struct {

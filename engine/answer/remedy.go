@@ -16,6 +16,11 @@ func (t *tester) remedies(test ems.Test, out *api.Test) {
 	found := t.model.Remedies(test, &budget)
 	t.budget -= before - budget.Steps
 	for _, r := range found.List {
+		// A remedy names its terms, and the lines of the test that follows, some ten times in all.
+		if t.room -= 10 * nameBytes(t.design); t.room < 0 {
+			found.Complete, found.Larger = false, ems.Unknown
+			break
+		}
 		out.Remedies = append(out.Remedies, t.remedy(test, r))
 	}
 	out.RemediesComplete = &found.Complete

@@ -69,8 +69,8 @@ func lines(m *ems.Model, refs []api.TermRef, tests bool) ([]engine.Set, []engine
 	if faults != nil {
 		return nil, faults
 	}
-	if m.CountComponents(chosen, MaxComponents) > MaxComponents {
-		return nil, []engine.Fault{{Code: api.TooManyComponents, Place: "design", Detail: fmt.Sprintf("The expectations of the %d lines asked for hold more than %d components. Name fewer lines in \"only\", or set \"max_order\" so that interactions of many factors are taken as negligible.", len(chosen), MaxComponents)}}
+	if limit := maxComponents(d); m.CountComponents(chosen, limit) > limit {
+		return nil, []engine.Fault{{Code: api.TooManyComponents, Place: "design", Detail: fmt.Sprintf("The expectations of the %d lines asked for hold more than %d components. Name fewer lines in \"only\", or set \"max_order\" so that interactions of many factors are taken as negligible.", len(chosen), limit)}}
 	}
 	return chosen, nil
 }

@@ -13,6 +13,7 @@ import (
 const (
 	searchSteps        = 20_000_000
 	searchStepsPerTest = 4_000_000
+	remedyBytes        = 32 << 20 // about, of remedies in one answer
 )
 
 // Tests answers /v1/tests. The error is that of the context.
@@ -31,6 +32,7 @@ func Tests(ctx context.Context, request *api.TestsRequest) (*api.TestsAnswer, []
 		namer: newNamer(d), model: m, variances: variances,
 		difference: request.ApproximateForm == api.DifferenceForm,
 		budget:     searchSteps,
+		room:       remedyBytes,
 	}
 	answer := &api.TestsAnswer{Title: d.Title(), Constraint: constraint(d), ApproximateForm: form(t.difference), Tests: make([]api.Test, len(chosen))}
 	solver := m.NewSolver()
@@ -56,7 +58,8 @@ type tester struct {
 	model      *ems.Model
 	variances  map[engine.Set]float64 // nil where none were supplied
 	difference bool
-	budget     int
+	budget     int // steps left for searching remedies
+	room       int // bytes left for writing them
 }
 
 func status(t ems.Test) string {
