@@ -135,7 +135,8 @@ func (d *Design) levels(i int) int64 {
 func (d *Design) DF(s Set) int64 {
 	crossed := d.Crossed(s)
 	df := int64(1)
-	for _, i := range s.Members() {
+	for rest := s; rest != 0; rest &= rest - 1 {
+		i := bits.TrailingZeros32(uint32(rest))
 		n := d.levels(i)
 		if crossed.Has(i) {
 			n--

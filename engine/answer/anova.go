@@ -174,7 +174,7 @@ func (a *analyst) row(sums *fit.Sums, r *fit.Row) api.Row {
 	if r.Line < 0 {
 		return out
 	}
-	out.Pooled = a.pooled(a.plan.Model.Lines[r.Line].Pooled)
+	out.Pooled = a.pooled(&a.plan.Model.Lines[r.Line])
 	if r.Set == a.design.Residual() {
 		return out
 	}

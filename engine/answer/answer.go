@@ -37,6 +37,7 @@ type namer struct {
 	design     *engine.Design
 	terms      []api.Term
 	components []string
+	pools      map[*ems.Line][]api.Pooled
 }
 
 func newNamer(d *engine.Design) *namer {
@@ -70,21 +71,24 @@ func (n *namer) effect(s engine.Set) string {
 	return api.Fixed
 }
 
-// pooled lists the members of a pooled line. Where max_order pooled more than MaxPooledList terms into it, one entry stands
-// for those.
-func (n *namer) pooled(sets []engine.Set) []api.Pooled {
-	if len(sets) == 0 {
+// pooled lists the members of a pooled line, once for each line. Where max_order pooled more than MaxPooledList terms into
+// it, one entry stands for those.
+func (n *namer) pooled(line *ems.Line) []api.Pooled {
+	if len(line.Pooled) == 0 {
 		return []api.Pooled{}
 	}
+	list, ok := n.pools[line]
+	if ok {
+		return list
+	}
 	above := &api.AboveOrder{AboveOrder: n.design.MaxOrder()}
-	for _, s := range sets {
+	for _, s := range line.Pooled {
 		if n.design.AboveOrder(s) {
 			above.Terms++
 			above.DF += n.design.DF(s)
 		}
 	}
-	var list []api.Pooled
-	for _, s := range sets {
+	for _, s := range line.Pooled {
 		if above.Terms <= MaxPooledList || !n.design.AboveOrder(s) {
 			list = append(list, api.Pooled{Term: n.name(s)})
 		}
@@ -92,6 +96,10 @@ func (n *namer) pooled(sets []engine.Set) []api.Pooled {
 	if above.Terms > MaxPooledList {
 		list = append(list, api.Pooled{Above: above})
 	}
+	if n.pools == nil {
+		n.pools = make(map[*ems.Line][]api.Pooled)
+	}
+	n.pools[line] = list
 	return list
 }
 
@@ -112,7 +120,7 @@ func (n *namer) shares(weights []ems.Weight) []api.Share {
 func (n *namer) weights(m *ems.Model, weights []ems.Weight) []api.Weight {
 	list := make([]api.Weight, len(weights))
 	for i, w := range weights {
-		list[i] = api.Weight{Share: n.share(w), Pooled: n.pooled(m.Lines[m.Line(w.Set)].Pooled)}
+		list[i] = api.Weight{Share: n.share(w), Pooled: n.pooled(&m.Lines[m.Line(w.Set)])}
 	}
 	return list
 }

@@ -32,10 +32,10 @@ func ExpectedMeanSquares(request *api.ExpectedMeanSquaresRequest) (*api.Expected
 }
 
 func (n *namer) expectation(m *ems.Model, s engine.Set, latex bool) api.ExpectedMeanSquare {
-	line := m.Lines[m.Line(s)]
+	line := &m.Lines[m.Line(s)]
 	components := m.Expectation(s)
 	e := api.ExpectedMeanSquare{
-		Term: n.term(s), Effect: n.effect(s), DF: line.DF, Pooled: n.pooled(line.Pooled),
+		Term: n.term(s), Effect: n.effect(s), DF: line.DF, Pooled: n.pooled(line),
 		Components: make([]api.Component, len(components)), Text: n.sum(components),
 	}
 	for i, c := range components {

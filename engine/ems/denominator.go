@@ -43,13 +43,13 @@ func (t Test) HasNegative() bool {
 
 // Solver finds the tests of one model; it keeps scratch space between calls and is not safe for concurrent use.
 type Solver struct {
-	model  *Model
-	weight []engine.Rational // by line
+	model *Model
+	value []engine.Rational // by line: weight over multiplier
 }
 
 // NewSolver returns a solver for the model's tests.
 func (m *Model) NewSolver() *Solver {
-	return &Solver{model: m, weight: make([]engine.Rational, len(m.Lines))}
+	return &Solver{model: m, value: make([]engine.Rational, len(m.Lines))}
 }
 
 // Test finds what tests line s, which is not the residual.
@@ -79,63 +79,71 @@ func (v *Solver) Test(s engine.Set) Test {
 //
 // which is forward substitution: exact, and unique. Where the right-hand side is not 0 but line T has no degrees of
 // freedom, the component of T cannot be matched. Lines with a fixed component never have a weight: no target holds one.
+//
+// Where m(S,T) = 0, so is w(T): each w(U)·m(U,T) then has the same vanishing factor. Everywhere else the equation is solved
+// for w(T)/m(S,T), which needs far smaller numbers: of the factors of m(S,U)·m(U,T)/m(S,T) only those remain that are
+// crossed in U and bracketed in T (see ratio).
 func (v *Solver) solve(s engine.Set, without []engine.Set) (solution, unmatched []Weight) {
 	m := v.model
 	used := make([]engine.Set, 0, 8)
 	for t := range m.above(s) {
 		l := m.Line(t)
-		v.weight[l] = engine.Rational{}
-		if slices.Contains(without, t) {
+		v.value[l] = engine.Rational{}
+		if slices.Contains(without, t) || m.multiplier(s, t).Sign() == 0 {
 			continue
 		}
-		w := v.need(s, t, used)
+		x := v.need(s, t, used)
 		switch {
-		case w.Sign() == 0:
+		case x.Sign() == 0:
 		case m.Lines[l].DF == 0:
-			unmatched = append(unmatched, Weight{t, w})
+			unmatched = append(unmatched, Weight{t, x.Mul(m.multiplier(s, t))})
 		default:
-			v.weight[l] = w
+			v.value[l] = x
 			used = append(used, t)
 		}
 	}
 	m.sort(used)
 	solution = make([]Weight, len(used))
 	for i, u := range used {
-		solution[i] = Weight{u, v.weight[m.Line(u)]}
+		solution[i] = Weight{u, v.value[m.Line(u)].Mul(m.multiplier(s, u))}
 	}
 	slices.SortFunc(unmatched, func(a, b Weight) int { return cmp.Compare(m.Design.Index(a.Set), m.Design.Index(b.Set)) })
 	return solution, unmatched
 }
 
-// need returns what is still missing of the component of t, over N(t), after the lines used so far.
+// need returns w(T)/m(S,T) from the lines used so far.
 func (v *Solver) need(s, t engine.Set, used []engine.Set) engine.Rational {
 	m := v.model
-	w := m.multiplier(s, t)
-	if inner := (t & m.Design.All() &^ s).Len(); inner < 31 && 1<<inner < len(used) {
-		v.needBySubsets(s, t, &w)
-		return w
+	x := engine.Whole(1)
+	take := func(u engine.Set, value engine.Rational) {
+		x = x.Sub(value.Mul(m.ratio(s, u, t)))
+	}
+	// The sets between s and t are walked where that is shorter than looking at all lines used.
+	free := t & m.Design.All() &^ s
+	if free.Len() < 31 && 1<<free.Len() < len(used) {
+		for sub := -free & free; sub != 0; sub = (sub - free) & free {
+			u := s | sub
+			if l := m.Line(u); l >= 0 && u != t && v.value[l].Sign() != 0 {
+				take(u, v.value[l])
+			}
+		}
+		return x
 	}
 	for _, u := range used {
 		if t.Holds(u) {
-			w = w.Sub(v.weight[m.Line(u)].Mul(m.multiplier(u, t)))
+			take(u, v.value[m.Line(u)])
 		}
 	}
-	return w
+	return x
 }
 
-// needBySubsets does the same by walking the sets between s and t, which is shorter where most lines are used.
-func (v *Solver) needBySubsets(s, t engine.Set, w *engine.Rational) {
-	m := v.model
-	free := t & m.Design.All() &^ s
-	for sub := -free & free; sub != 0; sub = (sub - free) & free {
-		u := s | sub
-		if u == t {
-			continue
-		}
-		if l := m.Line(u); l >= 0 && v.weight[l].Sign() != 0 {
-			*w = w.Sub(v.weight[l].Mul(m.multiplier(u, t)))
-		}
+// ratio returns m(S,U)·m(U,T)/m(S,T) for S ⊊ U ⊊ T and m(S,T) ≠ 0: the shrinkage of the factors that are crossed in U, not
+// in S, and bracketed in T. Where nothing is bracketed it is 1.
+func (m *Model) ratio(s, u, t engine.Set) engine.Rational {
+	if !m.Design.Restricted() {
+		return engine.Whole(1)
 	}
+	return m.shrinkage(m.Design.Crossed(u) &^ s &^ m.Design.Crossed(t))
 }
 
 // Numerator returns the lines of F's numerator with their weights, in the contract's order: the term's own line and, in the

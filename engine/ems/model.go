@@ -10,6 +10,7 @@ package ems
 
 import (
 	"cmp"
+	"math/bits"
 	"slices"
 
 	"guardrow/engine"
@@ -139,13 +140,18 @@ func (m *Model) multiplier(s, t engine.Set) engine.Rational {
 		}
 		return engine.Rational{}
 	}
-	extra := d.Crossed(t) &^ s
-	if extra&m.fixed != 0 {
+	return m.shrinkage(d.Crossed(t) &^ s)
+}
+
+// shrinkage returns, under the restricted constraint, the product over a set of factors of 0 for a fixed one, 1 − a/A for one
+// from a finite population, and 1 for any other.
+func (m *Model) shrinkage(factors engine.Set) engine.Rational {
+	if factors&m.fixed != 0 {
 		return engine.Rational{}
 	}
 	q := engine.Whole(1)
-	for _, i := range (extra & d.FiniteFactors()).Members() {
-		f := d.Factors()[i]
+	for rest := factors & m.Design.FiniteFactors(); rest != 0; rest &= rest - 1 {
+		f := m.Design.Factors()[bits.TrailingZeros32(uint32(rest))]
 		q = q.Mul(engine.Fraction(f.Population-f.Levels, f.Population))
 	}
 	return q

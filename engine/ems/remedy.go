@@ -75,7 +75,7 @@ func (m *Model) raise(s engine.Set, budget *Budget, r *Remedies) {
 		candidates = append(candidates, engine.MaxFactors)
 	}
 	complete := minimalSets(len(candidates), maxChanges, func(chosen []int) verdict {
-		if len(r.List) >= maxRemedies || !budget.spend(4*len(m.Design.Terms())) {
+		if len(r.List) >= maxRemedies || !budget.spend(8*len(m.Design.Terms())) {
 			return stop
 		}
 		d := m.Design

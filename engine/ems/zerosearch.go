@@ -16,16 +16,16 @@ type zeroSearch struct {
 	null   []engine.Set // terms that are negligible already and have degrees of freedom
 	zero   []bool       // by line: assumed zero in the trial at hand
 	trial  []engine.Set
-	weight []engine.Rational // by line
+	value  []engine.Rational // by line: weight over multiplier
 	used   []engine.Set
 }
 
 func newZeroSearch(m *Model, s engine.Set, budget *Budget) *zeroSearch {
 	z := &zeroSearch{
 		model: m, term: s, budget: budget,
-		lines:  slices.Collect(m.above(s)),
-		zero:   make([]bool, len(m.Lines)),
-		weight: make([]engine.Rational, len(m.Lines)),
+		lines: slices.Collect(m.above(s)),
+		zero:  make([]bool, len(m.Lines)),
+		value: make([]engine.Rational, len(m.Lines)),
 	}
 	for i, t := range m.Design.Terms() {
 		if m.line[i] < 0 && m.Design.DF(t) > 0 {
@@ -108,23 +108,23 @@ func (z *zeroSearch) serves(sets []engine.Set) bool {
 	z.used = z.used[:0]
 	for _, t := range z.lines {
 		l := m.Line(t)
-		if z.zero[l] {
+		if z.zero[l] || m.multiplier(z.term, t).Sign() == 0 {
 			continue
 		}
-		w := m.multiplier(z.term, t)
+		x := engine.Whole(1)
 		for _, u := range z.used {
 			if t.Holds(u) {
-				w = w.Sub(z.weight[m.Line(u)].Mul(m.multiplier(u, t)))
+				x = x.Sub(z.value[m.Line(u)].Mul(m.ratio(z.term, u, t)))
 			}
 		}
 		z.budget.spend(1 + len(z.used))
-		if w.Sign() == 0 {
+		if x.Sign() == 0 {
 			continue
 		}
 		if !z.available(t) {
 			return false
 		}
-		z.weight[l] = w
+		z.value[l] = x
 		z.used = append(z.used, t)
 	}
 	return len(z.used) > 0
