@@ -30,24 +30,36 @@ func TestFaultsOfDesigns(t *testing.T) {
 		{`{"factors": [{"name": "a,b", "levels": 2, "effect": "fixed"}]}`, "invalid_name factors/0/name"},
 		{`{"factors": [{"name": "a\nb", "levels": 2, "effect": "fixed"}]}`, "invalid_name factors/0/name"},
 		{`{"factors": [{"name": "Residual", "levels": 2, "effect": "fixed"}]}`, "invalid_name factors/0/name"},
-		{`{"factors": [{"name": "a", "levels": -1, "effect": "fixed"}, {"name": "a", "levels": 2, "effect": "random"}], "replicates": 0, "max_order": 0}`,
-			"duplicate_name factors/1/name; invalid_levels factors/0/levels; invalid_replicates replicates; invalid_max_order max_order"},
+		{
+			`{"factors": [{"name": "a", "levels": -1, "effect": "fixed"}, {"name": "a", "levels": 2, "effect": "random"}], "replicates": 0, "max_order": 0}`,
+			"duplicate_name factors/1/name; invalid_levels factors/0/levels; invalid_replicates replicates; invalid_max_order max_order",
+		},
 		{`{"factors": [{"name": "a", "levels": 2, "effect": "fixed", "within": ["a"]}]}`, "nesting_cycle factors/0/within"},
-		{`{"factors": [{"name": "a", "levels": 2, "effect": "fixed", "within": ["b"]}, {"name": "b", "levels": 2, "effect": "fixed", "within": ["c"]}, {"name": "c", "levels": 2, "effect": "fixed", "within": ["a"]}, {"name": "d", "levels": 2, "effect": "fixed", "within": ["e"]}, {"name": "e", "levels": 2, "effect": "fixed", "within": ["d"]}]}`,
-			"nesting_cycle factors/0/within; nesting_cycle factors/3/within"},
-		{`{"factors": [{"name": "a", "levels": 2, "effect": "fixed", "within": ["q", "b", "b"]}, {"name": "b", "levels": 2, "effect": "fixed"}]}`,
-			"unknown_factor factors/0/within/0; repeated_factor factors/0/within/2"},
-		{`{"factors": [{"name": "a", "levels": 4, "effect": "fixed", "population": 3}]}`,
-			"population_below_levels factors/0/population; population_of_fixed factors/0/population; population_unrestricted factors/0/population"},
+		{
+			`{"factors": [{"name": "a", "levels": 2, "effect": "fixed", "within": ["b"]}, {"name": "b", "levels": 2, "effect": "fixed", "within": ["c"]}, {"name": "c", "levels": 2, "effect": "fixed", "within": ["a"]}, {"name": "d", "levels": 2, "effect": "fixed", "within": ["e"]}, {"name": "e", "levels": 2, "effect": "fixed", "within": ["d"]}]}`,
+			"nesting_cycle factors/0/within; nesting_cycle factors/3/within",
+		},
+		{
+			`{"factors": [{"name": "a", "levels": 2, "effect": "fixed", "within": ["q", "b", "b"]}, {"name": "b", "levels": 2, "effect": "fixed"}]}`,
+			"unknown_factor factors/0/within/0; repeated_factor factors/0/within/2",
+		},
+		{
+			`{"factors": [{"name": "a", "levels": 4, "effect": "fixed", "population": 3}]}`,
+			"population_below_levels factors/0/population; population_of_fixed factors/0/population; population_unrestricted factors/0/population",
+		},
 		{`{"factors": [{"name": "a", "levels": 2, "effect": "random", "population": 9007199254740992}], "constraint": "restricted"}`, "design_too_large factors/0/population"},
 		{`{"factors": [{"name": "a", "levels": 9007199254740992, "effect": "random"}]}`, "design_too_large factors"},
 		{`{"factors": [{"name": "a", "levels": 94906266, "effect": "random"}, {"name": "b", "levels": 94906266, "effect": "random"}]}`, "design_too_large factors"},
 		{`{"factors": [{"name": "a", "levels": 2, "effect": "random"}], "replicates": 1e300}`, "design_too_large factors"},
 		{`{"factors": [{"name": "a", "levels": ["x", "", "x"], "effect": "random"}]}`, "invalid_label factors/0/levels/1; duplicate_label factors/0/levels/2"},
-		{`{"factors": [{"name": "a", "symbol": "ab", "levels": 2, "effect": "random"}, {"name": "b", "symbol": "x", "levels": 2, "effect": "random"}, {"name": "c", "symbol": "X", "levels": 2, "effect": "random"}]}`,
-			"invalid_symbol factors/0/symbol; duplicate_symbol factors/2/symbol"},
-		{`{"factors": [{"name": "a", "levels": 2, "effect": "random"}], "negligible": ["residual", ["b"], "a × a"]}`,
-			"negligible_residual negligible/0; unknown_factor negligible/1/0; repeated_factor negligible/2"},
+		{
+			`{"factors": [{"name": "a", "symbol": "ab", "levels": 2, "effect": "random"}, {"name": "b", "symbol": "x", "levels": 2, "effect": "random"}, {"name": "c", "symbol": "X", "levels": 2, "effect": "random"}]}`,
+			"invalid_symbol factors/0/symbol; duplicate_symbol factors/2/symbol",
+		},
+		{
+			`{"factors": [{"name": "a", "levels": 2, "effect": "random"}], "negligible": ["residual", ["b"], "a × a"]}`,
+			"negligible_residual negligible/0; unknown_factor negligible/1/0; repeated_factor negligible/2",
+		},
 	} {
 		d, faults := engine.Check(declare(t, c.design))
 		if got := codes(faults); got != c.want || d != nil {
