@@ -1,6 +1,7 @@
 package api
 
 import (
+	"bytes"
 	"encoding/json"
 	"errors"
 	"math"
@@ -85,13 +86,43 @@ type Label string
 // UnmarshalJSON reads a string, or a number as its shortest decimal text (1, 1.0 and "1" are one label).
 func (l *Label) UnmarshalJSON(text []byte) error {
 	if len(text) > 0 && text[0] == '"' {
-		return json.Unmarshal(text, (*string)(l))
+		return unquote(text, (*string)(l))
 	}
 	x, err := strconv.ParseFloat(string(text), 64)
 	if err != nil {
 		return errors.New("a label is a text or a number")
 	}
 	*l = Label(NumberLabel(x))
+	return nil
+}
+
+// unquote reads a JSON string. Nearly all hold no escapes and are what stands between the quotation marks.
+func unquote(text []byte, into *string) error {
+	if n := len(text); n >= 2 && text[0] == '"' && bytes.IndexByte(text, '\\') < 0 {
+		*into = string(text[1 : n-1])
+		return nil
+	}
+	return json.Unmarshal(text, into)
+}
+
+// elements calls read with each element of a JSON array of texts and numbers, which is known to be valid JSON.
+func elements(text []byte, read func(element []byte) error) error {
+	text = bytes.TrimSpace(text[1 : len(text)-1])
+	for len(text) > 0 {
+		end, quoted := 0, false
+		for ; end < len(text) && (quoted || text[end] != ','); end++ {
+			switch text[end] {
+			case '"':
+				quoted = !quoted
+			case '\\':
+				end++
+			}
+		}
+		if err := read(bytes.TrimSpace(text[:end])); err != nil {
+			return err
+		}
+		text = bytes.TrimLeft(text[min(end+1, len(text)):], " \t\r\n")
+	}
 	return nil
 }
 
@@ -107,16 +138,15 @@ func NumberLabel(x float64) string {
 // UnmarshalJSON reads a count or a list of labels.
 func (l *Levels) UnmarshalJSON(text []byte) error {
 	if len(text) > 0 && text[0] == '[' {
-		var labels []Label
-		if err := json.Unmarshal(text, &labels); err != nil {
+		labels := []string{}
+		err := elements(text, func(element []byte) error {
+			var label Label
+			err := label.UnmarshalJSON(element)
+			labels = append(labels, string(label))
 			return err
-		}
-		l.Labels = make([]string, len(labels))
-		for i, label := range labels {
-			l.Labels[i] = string(label)
-		}
-		l.Count = int64(len(labels))
-		return nil
+		})
+		l.Labels, l.Count = labels, int64(len(labels))
+		return err
 	}
 	var count Integer
 	if err := count.UnmarshalJSON(text); err != nil {
@@ -151,10 +181,15 @@ func (t *TermRef) UnmarshalJSON(text []byte) error {
 		return errors.New("a term is missing")
 	case text[0] == '"':
 		*t = TermRef{}
-		return json.Unmarshal(text, &t.Text)
+		return unquote(text, &t.Text)
 	case text[0] == '[':
-		*t = TermRef{}
-		return json.Unmarshal(text, &t.Factors)
+		*t = TermRef{Factors: []string{}}
+		return elements(text, func(element []byte) error {
+			var name string
+			err := unquote(element, &name)
+			t.Factors = append(t.Factors, name)
+			return err
+		})
 	}
 	var parts struct {
 		Crossed []string `json:"crossed"`
