@@ -63,12 +63,21 @@ func newLogger(w io.Writer, level zapcore.Level) *zap.Logger {
 	return zap.New(zapcore.NewCore(zapcore.NewJSONEncoder(config), zapcore.Lock(zapcore.AddSync(w)), level))
 }
 
+// Times that are not settings.
+const (
+	headerTime = 10 * time.Second // for the header of a request to arrive; not longer than the body has
+	answerTime = 5 * time.Second  // to send what is answered at the stop time
+)
+
 // serveOn serves until the context ends. Then /readyz says so; after the drain time no new connection is taken, and what is in
-// flight is finished; what is not done at the stop time is answered with a 503.
+// flight is finished; work that is not done at the stop time is answered with a 503, and connections that are still open after
+// that are cut off, which is an error.
 func serveOn(ctx context.Context, listener net.Listener, handler *service.Service, logger *zap.Logger, s *settings) error {
 	server := &http.Server{
 		Handler:           handler,
-		ReadHeaderTimeout: 10 * time.Second,
+		ReadHeaderTimeout: min(headerTime, s.bodyTime),
+		// For bodies that nobody reads: without it a GET that announces a body and sends none would hold its connection for good.
+		ReadTimeout: min(headerTime, s.bodyTime) + s.bodyTime,
 		// The service has limits of its own on a body's time, the queue and the work. Beyond their sum a connection is stuck.
 		WriteTimeout:   s.bodyTime + s.queueTime + s.workTime + time.Minute,
 		IdleTimeout:    2 * time.Minute,
@@ -91,10 +100,10 @@ func serveOn(ctx context.Context, listener net.Listener, handler *service.Servic
 		return nil
 	}
 	handler.Stop()
-	last, cancelLast := context.WithTimeout(context.WithoutCancel(ctx), 5*time.Second)
+	last, cancelLast := context.WithTimeout(context.WithoutCancel(ctx), answerTime)
 	defer cancelLast()
 	if err := server.Shutdown(last); err != nil {
-		return errors.Join(err, server.Close())
+		return errors.Join(errors.New("requests were still arriving, or their answers leaving, after the stop time; their connections were cut off"), server.Close())
 	}
 	return nil
 }

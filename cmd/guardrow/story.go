@@ -98,11 +98,14 @@ func (s *study) printFitted(w *bytes.Buffer) {
 	}
 }
 
-// errorLine names the lines of the error in symbols.
+// errorLine writes the combination of lines that tests a term, in symbols; a weight is shown where it is not 1 or −1.
 func (s *study) errorLine(r api.Row) string {
 	parts := make([]string, len(r.Solution))
 	for i, share := range r.Solution {
 		name := s.symbol(share.Term)
+		if size := strings.TrimPrefix(share.Exact, "-"); size != "1" {
+			name = size + " " + name
+		}
 		switch {
 		case share.Weight < 0:
 			name = "− " + name

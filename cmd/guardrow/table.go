@@ -95,7 +95,7 @@ func probability(n api.Number) string {
 	case p < 0.0001:
 		return fmt.Sprintf("%.1e", p)
 	case p < 0.1:
-		return fmt.Sprintf("%.2g", p)
+		return fmt.Sprintf("%#.2g", p)
 	}
 	return fmt.Sprintf("%.2f", p)
 }
