@@ -23,6 +23,9 @@ func TestDeploymentFitsTheSettings(t *testing.T) {
 	if set["GUARDROW_LISTEN"] == "" {
 		t.Error("the image does not say where to listen; the default is reached from inside only")
 	}
+	if !strings.Contains(string(image), "\nARG VERSION="+version+"\n") {
+		t.Errorf("the image is not that of version %s", version)
+	}
 	text, err := os.ReadFile("../../deploy/deployment.yaml")
 	if err != nil {
 		t.Fatal(err)
@@ -33,8 +36,9 @@ func TestDeploymentFitsTheSettings(t *testing.T) {
 				Spec struct {
 					Grace      int `yaml:"terminationGracePeriodSeconds"`
 					Containers []struct {
-						Args []string `yaml:"args"`
-						Env  []struct{ Name, Value string }
+						Image string
+						Args  []string
+						Env   []struct{ Name, Value string }
 					}
 				}
 			}
@@ -46,6 +50,9 @@ func TestDeploymentFitsTheSettings(t *testing.T) {
 	pod := deployment.Spec.Template.Spec
 	if len(pod.Containers) != 1 || len(pod.Containers[0].Env) == 0 {
 		t.Fatalf("read %+v", pod)
+	}
+	if image := pod.Containers[0].Image; image != "guardrow:"+version {
+		t.Errorf("the deployment runs %s, this is version %s", image, version)
 	}
 	for _, e := range pod.Containers[0].Env {
 		set[e.Name] = e.Value
