@@ -182,8 +182,8 @@ func (a *analyst) row(sums *fit.Sums, r *fit.Row) api.Row {
 	if !r.Test.Testable() {
 		return out
 	}
-	out.Numerator = a.weights(a.plan.Model, r.Test.Numerator(a.plan.Difference))
-	out.Denominator = a.weights(a.plan.Model, r.Test.Denominator(a.plan.Difference))
+	out.Numerator = a.weights(a.plan.Model, r.Numerator)
+	out.Denominator = a.weights(a.plan.Model, r.Denominator)
 	out.Solution = a.shares(r.Test.Solution)
 	out.F, out.P = api.Num(r.F), api.Num(r.P)
 	out.FReason = trouble(r.Trouble)

@@ -30,6 +30,8 @@ type Row struct {
 	SS          float64 // with those of the terms pooled into the line
 	MS          float64 // NaN where df is 0
 	Test        ems.Test
+	Numerator   []ems.Weight // of F, in the plan's form; nil where there is no test
+	Denominator []ems.Weight
 	F           float64 // NaN where there is none
 	DFNumerator float64
 	DFError     float64
@@ -101,8 +103,8 @@ func newRow(s engine.Set, line int, df int64, ss float64) Row {
 // test computes F, its df and p for one row.
 func (p *Plan) test(r *Row, ms []float64) {
 	m := p.Model
-	numerator := p.side(r.Test.Numerator(p.Difference), ms)
-	denominator := p.side(r.Test.Denominator(p.Difference), ms)
+	r.Numerator, r.Denominator = r.Test.Numerator(p.Difference), r.Test.Denominator(p.Difference)
+	numerator, denominator := p.side(r.Numerator, ms), p.side(r.Denominator, ms)
 	r.DFNumerator, r.DFError = numerator.df, denominator.df
 	if r.Test.Exact() {
 		// Whole numbers, not Satterthwaite's formula for one line.
