@@ -1,6 +1,7 @@
 package service
 
 import (
+	"context"
 	"errors"
 	"fmt"
 	"io"
@@ -24,9 +25,10 @@ type intake struct {
 	source  io.ReadCloser
 	header  *http.ResponseController
 	x       *exchange
-	left    int64 // bytes that the body may still have
-	taken   int64 // bytes taken from the service's buffer
-	ended   bool  // whether all of the body is here
+	left    int64       // bytes that the body may still have
+	taken   int64       // bytes taken from the service's buffer
+	unhook  func() bool // of the service's stop
+	ended   bool        // whether all of the body is here
 }
 
 func (s *Service) intake(x *exchange) *intake {
@@ -43,6 +45,7 @@ func (in *intake) open() error {
 	if err != nil && !errors.Is(err, http.ErrNotSupported) {
 		return err
 	}
+	in.unhook = context.AfterFunc(in.service.stopping, func() { _ = in.header.SetReadDeadline(time.Unix(1, 0)) })
 	return nil
 }
 
@@ -50,11 +53,17 @@ func (in *intake) open() error {
 // if its client had gone. Where the body did not arrive the deadline stays, so that nobody waits for the rest of it.
 func (in *intake) arrived() {
 	in.ended = true
+	in.unhook()
 	_ = in.header.SetReadDeadline(time.Time{}) // as in open; a dead connection shows elsewhere
 }
 
 // close gives back what was taken.
-func (in *intake) close() { in.service.buffer.giveBack(in.taken) }
+func (in *intake) close() {
+	if in.unhook != nil {
+		in.unhook()
+	}
+	in.service.buffer.giveBack(in.taken)
+}
 
 // whole reads the body as it is.
 func (in *intake) whole() ([]byte, error) {
@@ -116,6 +125,10 @@ func (in *intake) Read(p []byte) (int, error) {
 			in.arrived()
 		}
 		return n, err
+	case in.service.stopped():
+		r := shuttingDown().because(err)
+		r.close = true
+		return n, r
 	case errors.Is(err, os.ErrDeadlineExceeded):
 		r := refuse(api.BodyTooSlow, fmt.Sprintf("The body did not arrive within %v. Send it again.", in.service.options.BodyTime)).because(err)
 		r.close = true
